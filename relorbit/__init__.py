@@ -1,0 +1,58 @@
+"""relorbit: orbits of visual double stars from position angles and separations.
+
+>>> import relorbit
+>>> pair = relorbit.read("measures.csv")                     # doctest: +SKIP
+>>> solution = relorbit.solve(pair)                          # doctest: +SKIP
+>>> relorbit.ephemeris(solution, [2027.0, 2028.0]).theta     # doctest: +SKIP
+
+The names below are stable, and are imported when they are first used.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+__version__ = "0.1.0"
+
+if TYPE_CHECKING:
+    from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
+    from relorbit.errors import InputError, RelorbitError, Undetermined
+    from relorbit.measures.pair import Pair, RecordedOrbit
+    from relorbit.measures.store import read_pair as read
+    from relorbit.measures.table import Measures
+    from relorbit.orbit.elements import Elements
+    from relorbit.solve.solution import Solution
+    from relorbit.solve.solver import solve
+
+_HOMES = {
+    "Elements": "relorbit.orbit.elements",
+    "Ephemeris": "relorbit.derive.ephemeris",
+    "InputError": "relorbit.errors",
+    "Measures": "relorbit.measures.table",
+    "Pair": "relorbit.measures.pair",
+    "RecordedOrbit": "relorbit.measures.pair",
+    "RelorbitError": "relorbit.errors",
+    "Solution": "relorbit.solve.solution",
+    "Undetermined": "relorbit.errors",
+    "ephemeris": "relorbit.derive.ephemeris",
+    "read": "relorbit.measures.store",
+    "solve": "relorbit.solve",
+    "solve_many": "relorbit.batch",
+    "turning_points": "relorbit.derive.ephemeris",
+}
+__all__ = sorted([*_HOMES, "__version__"])
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        raise AttributeError(f"module 'relorbit' has no attribute {name!r}")
+    home = import_module(_HOMES[name])
+    if name == "solve":
+        # the room is callable, so that `relorbit.solve` is both it and its function
+        return home
+    return getattr(home, {"read": "read_pair"}.get(name, name))
+
+
+def __dir__() -> list[str]:
+    return __all__

@@ -1,0 +1,131 @@
+"""From the search's map to the distinct orbits that fit, best first."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from relorbit.orbit.elements import projection_from_constants
+from relorbit.orbit.kepler import TWO_PI, FloatArray
+from relorbit.solve.linear import SkyData, fit_constants, sky_data
+from relorbit.solve.observations import Observations
+from relorbit.solve.refine import Holding, Problem, Refined, polar_problem, refine, sky_problem
+from relorbit.solve.search import ECCENTRICITIES, period_grid, search
+
+STARTS = 32  # minima of the map that are followed down
+FIRST_STEPS, LATER_STEPS = 6, 25
+ALWAYS_FOLLOWED = 10  # best orbits that go on whatever their chi2
+HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
+FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
+SAME = 1e-4  # orbits whose coordinates differ by less than this, in units of their size, are one
+
+
+def find_basins(
+    observations: Observations,
+    held: Holding | None = None,
+    period_range: tuple[float, float] | None = None,
+) -> tuple[float, Refined]:
+    """Every distinct orbit that the measures allow, without a starting guess.
+
+    Parameters
+    ----------
+    observations : Observations
+        At least four rows with both values, or more that have one.
+    held : Holding, optional
+    period_range : (float, float), optional
+        Julian years; by default what the span and number of the measures allow.
+
+    Returns
+    -------
+    reference_epoch : float
+        Julian year of the regular coordinates.
+    orbits : Refined
+        Distinct minima of chi2 in theta and rho, u of shape (m, 7), in rising order of chi2.
+    """
+    held = held or Holding()
+    t0 = observations.mean_epoch
+    data = sky_data(observations)
+    u = starting_orbits(data, t0, held, period_range)
+    few = _fewer(observations)
+    u = _follow(sky_problem(sky_data(few), t0), u, held)
+    return t0, settle(polar_problem(observations, t0), u, held)
+
+
+def settle(problem: Problem, u: FloatArray, held: Holding) -> Refined:
+    """Distinct minima of the problem, best first, from near starts u, shape (c, 7)."""
+    rough = refine(problem, u, held, most_iterations=LATER_STEPS, tolerance=1e-2)
+    keep = _distinct(rough.u, rough.chi2)
+    keep = keep[_hopeful(rough.chi2[keep])]
+    fine = refine(problem, rough.u[keep], held)
+    keep = _distinct(fine.u, fine.chi2)
+    return Refined(fine.u[keep], fine.chi2[keep], rough.iterations + fine.iterations)
+
+
+def starting_orbits(
+    data: SkyData, t0: float, held: Holding, period_range: tuple[float, float] | None
+) -> FloatArray:
+    """Regular coordinates, shape (c, 7), of the best minima of the map."""
+    span = data.epoch[-1] - data.epoch[0]
+    distinct = np.unique(np.round(data.epoch, 3)).size
+    periods, eccentricities = period_grid(span, distinct, period_range), ECCENTRICITIES
+    if "P" in held.values:
+        periods = np.array([held.values["P"]])
+    if "e" in held.values:
+        eccentricities = (held.values["e"],)
+    P, e, T = search(data, periods, eccentricities).basins(STARTS)
+    if "T" in held.values:
+        T = np.full_like(T, held.values["T"])
+    return orbits_at(data, t0, P, e, T)
+
+
+def orbits_at(
+    data: SkyData, t0: float, P: FloatArray, e: FloatArray, T: FloatArray
+) -> FloatArray:
+    """Regular coordinates, shape (m, 7), of the orbits with the best constants at m (P, e, T)."""
+    constants = fit_constants(data, P, e, T).constants
+    alpha, beta = projection_from_constants(*constants.T)
+    turn = np.exp(1j * TWO_PI * (t0 - T) / P)
+    g, alpha, beta = e * np.conj(turn), alpha * turn, beta * np.conj(turn)
+    columns = np.log(P), g.real, g.imag, alpha.real, alpha.imag, beta.real, beta.imag
+    return np.stack(columns, axis=-1)
+
+
+def _follow(problem: Problem, u: FloatArray, held: Holding) -> FloatArray:
+    """Bring starts down, letting go of those that meet another or lead nowhere."""
+    first = refine(problem, u, held, most_iterations=FIRST_STEPS, tolerance=1e-2)
+    keep = _distinct(first.u, first.chi2)
+    keep = keep[_hopeful(first.chi2[keep])]
+    later = refine(problem, first.u[keep], held, most_iterations=LATER_STEPS, tolerance=1e-2)
+    keep = _distinct(later.u, later.chi2)
+    return later.u[keep[_hopeful(later.chi2[keep])]]
+
+
+def _hopeful(chi2: FloatArray) -> NDArray[np.bool_]:
+    """Which of some orbits in rising order of chi2 are worth following."""
+    return (chi2 <= HOPELESS * chi2[0]) | (np.arange(chi2.size) < ALWAYS_FOLLOWED)
+
+
+def _distinct(u: FloatArray, chi2: FloatArray) -> NDArray[np.intp]:
+    """Indices of orbits that differ from every better one, in rising order of chi2."""
+    order = np.argsort(chi2, kind="stable")
+    order = order[np.isfinite(chi2[order])]
+    size = np.abs(u[:, 3:]).max(axis=1, keepdims=True)
+    scaled = np.concatenate([u[:, :3], u[:, 3:] / size, np.log(size)], axis=1)
+    kept: list[int] = []
+    for index in order:
+        near = np.abs(scaled[kept] - scaled[index]).max(axis=1) if kept else np.empty(0)
+        if not np.any(near < SAME):
+            kept.append(int(index))
+    return np.array(kept, dtype=np.intp)
+
+
+def _fewer(observations: Observations) -> Observations:
+    """At most `FOLLOWED_MEASURES`: of rows that follow one another, the one of most weight."""
+    count = len(observations)
+    if count <= FOLLOWED_MEASURES:
+        return observations
+    group = np.arange(count) * FOLLOWED_MEASURES // count
+    weight = np.maximum(observations.sky_weight, 1e-300)
+    order = np.lexsort((weight, group))
+    last = np.flatnonzero(np.diff(group[order], append=group[-1] + 1))
+    return observations.select(np.sort(order[last]))

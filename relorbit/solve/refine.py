@@ -1,0 +1,292 @@
+"""Nonlinear least squares on (theta, rho), one orbit or many at a time.
+
+The unknowns are the regular coordinates of `relorbit.orbit.regular`, the Jacobian is exact, and
+the step is that of Levenberg (1944) and Marquardt (1963), with the damping rule of Nielsen (1999,
+IMM-REP-1999-05, from memory). Held elements are kept by stepping in the directions that do not
+change them, and putting them back to their values after each step.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from relorbit.orbit.elements import NAMES, Elements
+from relorbit.orbit.kepler import TWO_PI, FloatArray
+from relorbit.orbit.partials import polar_derivatives
+from relorbit.orbit.regular import (
+    SIZE,
+    campbell_jacobian,
+    elements_from_regular,
+    position_and_jacobian,
+    regular_from_elements,
+)
+from relorbit.solve.linear import SkyData
+from relorbit.solve.observations import Observations
+
+HIGHEST_E = 0.99999
+LARGEST_STEP = 1.5  # in ln P, of one iteration
+# residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits u, shape (c, 7)
+WithJacobian = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
+
+
+@dataclass(frozen=True)
+class Problem:
+    """A least-squares problem in the regular coordinates of a reference epoch."""
+
+    reference_epoch: float
+    with_jacobian: WithJacobian
+
+
+def polar_problem(observations: Observations, reference_epoch: float) -> Problem:
+    """Standardised residuals of theta (wrapped) and rho: the chi2 that a solution reports."""
+    o = observations
+    theta_rows, rho_rows = _rows(o.per_theta), _rows(o.per_rho)
+    per_theta, per_rho = o.per_theta[theta_rows], o.per_rho[rho_rows]
+    theta, rho = o.theta[theta_rows], o.rho[rho_rows]
+
+    def compare(z: NDArray[np.complex128]) -> FloatArray:
+        gap = theta - np.angle(z[..., theta_rows])
+        gap -= TWO_PI * np.rint(gap / TWO_PI)
+        along = (rho - np.abs(z[..., rho_rows])) * per_rho
+        return np.concatenate([gap * per_theta, along], axis=-1)
+
+    def with_jacobian(u: FloatArray) -> tuple[FloatArray, FloatArray]:
+        z, dz = position_and_jacobian(u, reference_epoch, o.epoch)
+        d_theta, d_rho = polar_derivatives(z, dz)
+        parts = [
+            d_theta[..., theta_rows] * per_theta,
+            d_rho[..., rho_rows] * per_rho,
+        ]
+        return compare(z), np.concatenate(parts, axis=-1)
+
+    return Problem(reference_epoch, with_jacobian)
+
+
+def _rows(per_value: FloatArray) -> slice | NDArray[np.intp]:
+    """Rows that have the value; a slice, which copies nothing, where all have it."""
+    return slice(None) if per_value.all() else np.flatnonzero(per_value)
+
+
+def sky_problem(data: SkyData, reference_epoch: float) -> Problem:
+    """Standardised residuals of x and y: smooth where theta is not, so good far from home."""
+    # W = L L' with L lower triangular, so L' dz is standardised
+    l11 = np.sqrt(data.w_xx)
+    l21 = np.where(l11 > 0.0, data.w_xy / np.where(l11 > 0.0, l11, 1.0), 0.0)
+    l22 = np.sqrt(np.maximum(data.w_yy - l21 * l21, 0.0))
+
+    def standardised(dz: NDArray[np.complex128]) -> FloatArray:
+        return np.concatenate([l11 * dz.real + l21 * dz.imag, l22 * dz.imag], axis=-1)
+
+    def with_jacobian(u: FloatArray) -> tuple[FloatArray, FloatArray]:
+        z, dz = position_and_jacobian(u, reference_epoch, data.epoch)
+        return standardised(data.z - z), standardised(dz)
+
+    return Problem(reference_epoch, with_jacobian)
+
+
+@dataclass(frozen=True)
+class Holding:
+    """Elements that keep given values during a fit.
+
+    Attributes
+    ----------
+    values : dict
+        Any of P, T, e, a, i, node, omega, in the units of `Elements`.
+    """
+
+    values: Mapping[str, float] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        unknown = set(self.values) - set(NAMES)
+        if unknown:
+            raise ValueError(f"no element is called {sorted(unknown)[0]}; use {', '.join(NAMES)}")
+
+    @property
+    def free(self) -> int:
+        """Number of unknowns left."""
+        held = set(self.values)
+        circular, face_on = self.values.get("e") == 0.0, self.values.get("i") in (0.0, 180.0)
+        # a circle has no periastron and a face-on orbit no node: one unknown less each
+        return SIZE - len(held | ({"omega"} if circular else set()) | ({"node"} if face_on else set()))
+
+    def put_back(self, u: FloatArray, reference_epoch: float) -> FloatArray:
+        """u, shape (c, 7), with the held elements at their values."""
+        if not self.values:
+            return u
+        out = np.empty_like(u)
+        for row, one in enumerate(u):
+            elements = elements_from_regular(one, reference_epoch)
+            out[row] = regular_from_elements(self.on(elements), reference_epoch)
+        return out
+
+    def on(self, elements: Elements) -> Elements:
+        """`elements` with the held ones at their values."""
+        changed = dict(self.values)
+        if "node" in changed and abs((elements.node - changed["node"] + 90.0) % 360.0 - 90.0) > 90.0:
+            # the fit names a node in [0, 180): the held one may be the other
+            changed.setdefault("omega", elements.omega + 180.0)
+        if changed.get("e") == 0.0 and "omega" not in changed:
+            # keep the place on the circle: count it from the node
+            shift = elements.omega / 360.0 * elements.P
+            changed.setdefault("T", elements.T - shift)
+            changed["omega"] = 0.0
+        return replace(elements, **changed)
+
+    def directions(self, u: FloatArray, reference_epoch: float) -> FloatArray | None:
+        """Orthonormal directions, shape (c, 7, free), along which no held element changes."""
+        if not self.values:
+            return None
+        return np.stack([self._directions(one, reference_epoch) for one in u])
+
+    def _directions(self, u: FloatArray, reference_epoch: float) -> FloatArray:
+        held = set(self.values)
+        by_u = campbell_jacobian(u, reference_epoch)
+        rows = []
+        for name in held:
+            if name == "e" and self.values["e"] == 0.0:
+                rows.extend(np.eye(SIZE)[1:3])
+            elif name == "i" and self.values["i"] in (0.0, 180.0):
+                rows.extend(np.eye(SIZE)[5:7] if self.values["i"] == 0.0 else np.eye(SIZE)[3:5])
+            else:
+                rows.append(by_u[NAMES.index(name)])
+        constraints = np.nan_to_num(np.array(rows))
+        constraints /= np.maximum(np.linalg.norm(constraints, axis=1, keepdims=True), 1e-300)
+        return np.linalg.qr(constraints.T, mode="complete")[0][:, len(rows) :]
+
+
+@dataclass(frozen=True)
+class Refined:
+    """Orbits after refinement: u, shape (c, 7), and chi2, shape (c,)."""
+
+    u: FloatArray
+    chi2: FloatArray
+    iterations: int
+
+
+def refine(
+    problem: Problem,
+    u: FloatArray,
+    held: Holding | None = None,
+    most_iterations: int = 60,
+    tolerance: float = 1e-9,
+    columns: slice = slice(None),
+) -> Refined:
+    """Bring c orbits to the nearest minimum of chi2.
+
+    Parameters
+    ----------
+    problem : Problem
+    u : ndarray, shape (c, 7)
+        Starting orbits in regular coordinates.
+    held : Holding, optional
+        Elements that keep their values.
+    most_iterations : int
+    tolerance : float
+        An orbit is at rest when a step is expected to lower chi2 by less than this.
+    columns : slice
+        Coordinates that may change; ``slice(1, 7)`` holds the period for many orbits at once.
+    """
+    held = held or Holding()
+    t0 = problem.reference_epoch
+    u = held.put_back(np.array(u, dtype=float, ndmin=2), t0)
+    chi2, normal, right = _normal_equations(problem, u)
+    damping, growth = np.full(chi2.size, 1e-4), np.full(chi2.size, 2.0)
+    active = np.arange(chi2.size)
+    iteration = 0
+    while active.size and iteration < most_iterations:
+        iteration += 1
+        basis = held.directions(u[active], t0)
+        full, expected = _damped_step(
+            normal[active], right[active], damping[active], basis, columns
+        )
+        trial = u[active] + full
+        inside = np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E
+        inside &= np.all(np.isfinite(trial), axis=1) & (np.abs(full[:, 0]) < LARGEST_STEP)
+        trial = held.put_back(np.where(inside[:, None], trial, u[active]), t0)
+        chi2_trial, normal_trial, right_trial = _normal_equations(problem, trial)
+        fall = chi2[active] - chi2_trial
+        better = inside & (fall > 0.0)
+        _adapt(damping, growth, active, better, fall, expected)
+        moved = active[better]
+        u[moved], chi2[moved] = trial[better], chi2_trial[better]
+        normal[moved], right[moved] = normal_trial[better], right_trial[better]
+        at_rest = (expected < tolerance) | (~better & (damping[active] > 1e10))
+        active = active[~at_rest]
+    return Refined(u, chi2, iteration)
+
+
+def _normal_equations(
+    problem: Problem, u: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """chi2, shape (c,), J J', shape (c, 7, 7), and J r, shape (c, 7)."""
+    r, J = problem.with_jacobian(u)
+    return (
+        np.einsum("cm,cm->c", r, r),
+        J @ np.swapaxes(J, -1, -2),
+        (J @ r[..., None])[..., 0],
+    )
+
+
+def _damped_step(
+    normal: FloatArray,
+    right: FloatArray,
+    damping: FloatArray,
+    basis: FloatArray | None,
+    columns: slice,
+) -> tuple[FloatArray, FloatArray]:
+    """Marquardt's step, shape (c, 7), and the fall of chi2 that the linear model expects."""
+    if basis is not None:
+        across = np.swapaxes(basis, -1, -2)
+        normal, right = across @ normal @ basis, (across @ right[..., None])[..., 0]
+    else:
+        normal, right = normal[:, columns, columns], right[:, columns]
+    diagonal = np.einsum("cjj->cj", normal)
+    scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
+    scaled = normal * scale[:, :, None] * scale[:, None, :]
+    scaled += np.eye(scaled.shape[-1]) * (damping[:, None, None] + 1e-13)
+    scaled_right = scale * right
+    inner = np.linalg.solve(scaled, scaled_right[..., None])[..., 0]
+    expected = np.einsum("cj,cj->c", inner, scaled_right + damping[:, None] * inner)
+    step = scale * inner
+    if basis is not None:
+        return (basis @ step[..., None])[..., 0], expected
+    full = np.zeros((step.shape[0], SIZE))
+    full[:, columns] = step
+    return full, expected
+
+
+def _adapt(
+    damping: FloatArray,
+    growth: FloatArray,
+    active: NDArray[np.intp],
+    better: NDArray[np.bool_],
+    fall: FloatArray,
+    expected: FloatArray,
+) -> None:
+    """Nielsen's rule: less damping by how well the linear model foretold the fall of chi2."""
+    ratio = np.where(better, fall, 0.0) / np.maximum(expected, 1e-300)
+    gain = np.maximum(1.0 / 10.0, 1.0 - (2.0 * np.minimum(ratio, 1.0) - 1.0) ** 3)
+    damping[active] *= np.where(better, gain, growth[active])
+    growth[active] = np.where(better, 2.0, growth[active] * 2.0)
+
+
+def covariance(problem: Problem, u: FloatArray, held: Holding | None = None) -> FloatArray:
+    """Covariance of the regular coordinates at a minimum, shape (7, 7).
+
+    The inverse of J'J of the standardised residuals, by a QR of the scaled Jacobian, within the
+    directions that the held elements leave free.
+    """
+    held = held or Holding()
+    _, J = problem.with_jacobian(np.asarray(u, dtype=float)[None])
+    basis = held.directions(np.asarray(u, dtype=float)[None], problem.reference_epoch)
+    Z = np.eye(SIZE) if basis is None else basis[0]
+    JZ = J[0].T @ Z
+    scale = np.linalg.norm(JZ, axis=0)
+    scale = np.where(scale > 0.0, scale, 1.0)
+    inverse = np.linalg.pinv(np.linalg.qr(JZ / scale, mode="r")) / scale[:, None]
+    root = Z @ inverse
+    return root @ root.T

@@ -1,0 +1,204 @@
+"""Every basin of (P, e, T), without a guess.
+
+For one period, the weights and the weighted places of the measures are shared out over bins of
+phase. The normal equations of the linear problem (see `linear`) for all T at once are then
+circular correlations of those bins with X^2, XY, Y^2, X and Y of a given e: a few FFTs give chi2
+over all T, at a cost that does not depend on the number of measures.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from relorbit.orbit.kepler import TWO_PI, FloatArray, eccentric_anomaly, unit_ellipse
+from relorbit.solve.linear import SkyData
+
+BINS = 256
+FREQUENCY_STEP = 0.08  # in units of one over the time span
+LONG_STEP = 0.12  # step in ln P beyond the span
+LONGEST = 100.0  # longest period searched, in time spans
+ECCENTRICITIES = (0.05, 0.28, 0.48, 0.64, 0.77, 0.87, 0.935, 0.975)
+# bins of T that are tried for eccentricities up to the first number
+RESOLUTION = ((0.55, 64), (0.85, 128), (1.0, BINS))
+BLOCK = 64  # periods at a time: bounds the memory
+ALWAYS_DOUBLE = 0.7  # periods above this many time spans are searched in double precision
+POINTS = 2000  # more measures than this are first added up in this many bins of time
+MOST_REVOLUTIONS = 40.0  # shortest period searched, as revolutions within the span
+
+
+@dataclass(frozen=True)
+class SearchMap:
+    """chi2 over the grid of periods and eccentricities, the best T taken at each point.
+
+    Attributes
+    ----------
+    P : ndarray, shape (p,), Julian years, falling.
+    e : ndarray, shape (k,)
+    chi2 : ndarray, shape (p, k)
+    T : ndarray, shape (p, k), Julian year of the best periastron passage.
+    """
+
+    P: FloatArray
+    e: FloatArray
+    chi2: FloatArray
+    T: FloatArray
+
+    def basins(self, most: int) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """P, e, T of the local minima of the map, best first, at most `most`."""
+        padded = np.pad(self.chi2, 1, constant_values=np.inf)
+        lowest = np.ones(self.chi2.shape, dtype=bool)
+        rows, columns = self.chi2.shape
+        for down in range(3):
+            for across in range(3):
+                lowest &= self.chi2 <= padded[down : down + rows, across : across + columns]
+        p, k = np.nonzero(lowest)
+        order = np.argsort(self.chi2[p, k], kind="stable")[:most]
+        p, k = p[order], k[order]
+        return self.P[p], self.e[k], self.T[p, k]
+
+
+def period_grid(
+    span: float, distinct: int, period_range: tuple[float, float] | None = None
+) -> FloatArray:
+    """Periods to look at, Julian years, from the longest to the shortest.
+
+    Parameters
+    ----------
+    span : float
+        Years from the first to the last measure.
+    distinct : int
+        Number of distinct epochs: with less than about two for each revolution there is no
+        telling one period from another, so the shortest period is 2.5 span / distinct, with
+        `MOST_REVOLUTIONS` within the span at the most.
+    period_range : (float, float), optional
+        Shortest and longest period instead.
+    """
+    shortest = span / min(max(5.0, 0.4 * distinct), MOST_REVOLUTIONS)
+    longest = LONGEST * span
+    if period_range is not None:
+        shortest, longest = period_range
+    beyond = np.empty(0)
+    if longest > span:
+        start = max(shortest, span)
+        count = max(2, int(np.ceil(np.log(longest / start) / LONG_STEP)) + 1)
+        beyond = np.geomspace(longest, start, count)[: -1 if shortest < span else None]
+    highest, lowest = 1.0 / shortest, 1.0 / min(longest, span)
+    within = np.empty(0)
+    if highest > lowest:
+        count = int(np.ceil((highest - lowest) * span / FREQUENCY_STEP)) + 1
+        within = 1.0 / np.linspace(lowest, highest, max(2, count))
+    return np.concatenate([beyond, within]) if shortest < longest else np.array([longest])
+
+
+def search(
+    data: SkyData, periods: FloatArray, eccentricities: tuple[float, ...] = ECCENTRICITIES
+) -> SearchMap:
+    """chi2 of the best orbit at every period and eccentricity of a grid.
+
+    Parameters
+    ----------
+    data : SkyData
+        Measures of one pair, shape (n,).
+    periods : ndarray, shape (p,)
+        Julian years.
+    eccentricities : tuple of float, length k
+        Each 0 <= e < 1.
+    """
+    reference = 0.5 * (data.epoch[0] + data.epoch[-1])
+    span = max(data.epoch[-1] - data.epoch[0], np.finfo(float).tiny)
+    epoch, values = _normal_points(data)
+    gain = np.empty((periods.size, len(eccentricities)))
+    phase = np.empty_like(gain)
+    for start in range(0, periods.size, BLOCK):
+        rows = slice(start, start + BLOCK)
+        # short arcs leave the normal equations too close to singular for single precision
+        kind = np.float64 if periods[rows].max() > ALWAYS_DOUBLE * span else np.float32
+        fields = _phase_bins((epoch - reference) / periods[rows, None], values)
+        spectra = np.fft.rfft(fields.astype(kind), axis=-1)
+        for column, e in enumerate(eccentricities):
+            kernels = _kernels(e).astype(spectra.dtype)
+            every = _gain(spectra[..., : kernels.shape[-1]], kernels)
+            best = np.argmax(every, axis=-1)
+            gain[rows, column] = np.take_along_axis(every, best[:, None], axis=-1)[:, 0]
+            phase[rows, column] = best / every.shape[-1]
+    T = reference + phase * periods[:, None]
+    return SearchMap(periods, np.array(eccentricities), data.constant - gain, T)
+
+
+def _normal_points(data: SkyData) -> tuple[FloatArray, FloatArray]:
+    """Epochs, shape (m,), and w_xx, w_xy, w_yy and W z, shape (5, m).
+
+    Beyond `POINTS` measures those that follow one another closely are added up, so that the cost
+    of the search stays what it is.
+    """
+    wx = data.w_xx * data.z.real + data.w_xy * data.z.imag
+    wy = data.w_xy * data.z.real + data.w_yy * data.z.imag
+    values = np.stack([data.w_xx, data.w_xy, data.w_yy, wx, wy])
+    if data.epoch.size <= POINTS:
+        return data.epoch, values
+    place = (data.epoch - data.epoch[0]) / (data.epoch[-1] - data.epoch[0]) * (POINTS - 1)
+    which = np.unique(place.astype(np.intp), return_inverse=True)[1]
+    weight = data.w_xx + data.w_yy
+    total = np.bincount(which, weight)
+    epoch = np.bincount(which, weight * data.epoch) / np.where(total > 0.0, total, 1.0)
+    summed = np.stack([np.bincount(which, value) for value in values])
+    return epoch[total > 0.0], summed[:, total > 0.0]
+
+
+def _phase_bins(turns: FloatArray, values: FloatArray) -> FloatArray:
+    """Share values, shape (f, n), out over bins of phase of turns, shape (p, n): (p, f, BINS)."""
+    place = np.remainder(turns, 1.0) * BINS
+    left = np.minimum(place.astype(np.intp), BINS - 1)
+    share = place - left
+    base = BINS * np.arange(left.shape[0])[:, None]
+    both = np.concatenate([(base + left).ravel(), (base + (left + 1) % BINS).ravel()])
+    shares = np.concatenate([1.0 - share, share])
+    fields = np.empty((left.shape[0], values.shape[0], BINS))
+    for slot, value in enumerate(values):
+        counts = np.bincount(both, (shares * value).ravel(), minlength=left.shape[0] * BINS)
+        fields[:, slot] = counts.reshape(-1, BINS)
+    return fields
+
+
+@lru_cache(maxsize=64)
+def _kernels(e: float) -> NDArray[np.complex128]:
+    """Conjugate spectra of X^2, XY, Y^2, X and Y over mean anomaly, shape (5, harmonics + 1).
+
+    The rounder the orbit, the fewer harmonics it has and the fewer T have to be tried.
+    """
+    X, Y = unit_ellipse(eccentric_anomaly(TWO_PI * np.arange(BINS) / BINS, e), e)
+    spectra = np.conj(np.fft.rfft(np.stack([X * X, X * Y, Y * Y, X, Y]), axis=-1))
+    bins = next(bins for highest, bins in RESOLUTION if e <= highest)
+    return spectra[:, : bins // 2 + 1] * (bins / BINS)
+
+
+def _correlations(spectra: NDArray, kernels: NDArray) -> NDArray:
+    """Every spectrum, (p, f, h), with every kernel, (k, h), back in T: (f k, p, bins)."""
+    products = np.moveaxis(spectra, 1, 0)[:, None] * kernels[:, None]
+    return np.fft.irfft(products, axis=-1).reshape(-1, spectra.shape[0], 2 * kernels.shape[1] - 2)
+
+
+def _gain(spectra: NDArray, kernels: NDArray) -> NDArray:
+    """By how much the best A, B, F, G at each T lower chi2, shape (p, BINS).
+
+    The gain is b' N^-1 b with the normal matrix N of (A, F, B, G) in 2-by-2 blocks.
+    """
+    a11, a12, a22, b11, b12, b22, c11, c12, c22 = _correlations(spectra[:, :3], kernels[:3])
+    p1, p2, q1, q2 = _correlations(spectra[:, 3:], kernels[3:])
+    ridge = 8.0 * np.finfo(a11.dtype).eps
+    scale = 1.0 / (a11 * a22 * (1.0 + ridge) - a12 * a12 + np.finfo(a11.dtype).tiny)
+    # K = A^-1 B, then the Schur complement C - B' K
+    k11, k12 = (a22 * b11 - a12 * b12) * scale, (a22 * b12 - a12 * b22) * scale
+    k21, k22 = (a11 * b12 - a12 * b11) * scale, (a11 * b22 - a12 * b12) * scale
+    s11 = c11 * (1.0 + ridge) - (b11 * k11 + b12 * k21)
+    s22 = c22 * (1.0 + ridge) - (b12 * k12 + b22 * k22)
+    s12 = c12 - (b11 * k12 + b12 * k22)
+    r1, r2 = q1 - (k11 * p1 + k21 * p2), q2 - (k12 * p1 + k22 * p2)
+    gain = (a22 * p1 * p1 - 2.0 * a12 * p1 * p2 + a11 * p2 * p2) * scale
+    determinant = s11 * s22 - s12 * s12
+    rest = s22 * r1 * r1 - 2.0 * s12 * r1 * r2 + s11 * r2 * r2
+    return gain + np.where(determinant > ridge * s11 * s22, rest / np.where(determinant > 0, determinant, 1.0), 0.0)

@@ -1,0 +1,233 @@
+"""`solve`: from the measures of a pair to its orbit, without a starting guess."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from typing import Any
+
+import numpy as np
+
+from relorbit.errors import InputError, Undetermined
+from relorbit.measures.pair import Pair
+from relorbit.orbit.elements import Elements
+from relorbit.orbit.regular import SIZE, Uncertainty, elements_from_regular
+from relorbit.orbit.third_law import total_mass
+from relorbit.solve.basins import find_basins
+from relorbit.solve.limits import (
+    PeriodProfile,
+    StraightMotion,
+    open_ended,
+    period_profile,
+    straight_motion,
+)
+from relorbit.solve.observations import Observations, observe
+from relorbit.solve.refine import Holding, Refined, covariance, polar_problem
+from relorbit.solve.residuals import residuals
+from relorbit.solve.solution import Alternative, Solution
+from relorbit.solve.warnings import gather
+
+# An orbit has three unknowns more than a straight line; for chance alone to lower chi2 by this
+# much with three unknowns has a probability of 0.001 (chi-square distribution).
+CURVATURE = 16.3
+MOST_ALTERNATIVES = 12
+
+
+def solve(
+    pair: Pair,
+    hold: Mapping[str, Any] | None = None,
+    *,
+    epoch_range: tuple[float, float] | None = None,
+    period_range: tuple[float, float] | None = None,
+    passage_near: float | None = None,
+) -> Solution:
+    """Find the orbit of a pair.
+
+    Parameters
+    ----------
+    pair : Pair
+    hold : mapping, optional
+        Elements to keep at a value, such as ``{"e": 0.0}`` or ``{"P": 41.6}``, in the units of
+        `Elements` (or Quantity).
+    epoch_range : (float, float), optional
+        Julian years; measures outside are not fitted.
+    period_range : (float, float), optional
+        Shortest and longest period to search, Julian years. By default from 2.5 time spans
+        divided by the number of epochs (not below a fortieth of the span) to 100 time spans.
+    passage_near : float, optional
+        Julian year; T is the passage nearest to it instead of the weighted mean epoch.
+
+    Returns
+    -------
+    Solution
+
+    Raises
+    ------
+    InputError
+        For an element that does not exist, or a value that it cannot have.
+    Undetermined
+        When the measures do not determine the orbit; `reason` says why and what would cure it,
+        `known` what they do say (a lower limit of the period, the motion).
+    """
+    held = _holding(hold)
+    observations = observe(pair.measures, epoch_range)
+    _enough(observations, held)
+    t0, orbits = find_basins(observations, held, _period_range(period_range))
+    dof = observations.numbers - held.free
+    scale = max(1.0, float(orbits.chi2[0]) / dof)
+    if not held.values:
+        _determined(observations, orbits, scale, t0)
+    u = orbits.u[0]
+    matrix = scale * covariance(polar_problem(observations, t0), u, held)
+    elements = _elements(u, t0, held, passage_near)
+    used = np.zeros(len(pair.measures), dtype=bool)
+    used[observations.rows] = True
+    uncertainty = Uncertainty(t0, matrix)
+    parallax = pair.parallax_mas
+    mass = None
+    if parallax is not None and parallax > 0.0:
+        mass = total_mass(elements, parallax, pair.parallax_err_mas, uncertainty)
+    solution = Solution(
+        pair=pair.name,
+        elements=elements,
+        uncertainty=uncertainty,
+        chi2=float(orbits.chi2[0]),
+        dof=dof,
+        error_scale=float(np.sqrt(scale)),
+        held=dict(held.values),
+        measures=len(pair.measures),
+        used=len(observations),
+        residuals=residuals(elements, pair.measures, used),
+        alternatives=tuple(_alternatives(orbits, t0, held, passage_near)),
+        mass_total=mass,
+        span=observations.span,
+        parallax_mas=parallax,
+        parallax_err_mas=pair.parallax_err_mas,
+    )
+    return gather(solution, pair, observations)
+
+
+def _holding(hold: Mapping[str, Any] | None) -> Holding:
+    """Held elements as plain numbers, each checked by the rules of `Elements`."""
+    if not hold:
+        return Holding()
+    allowed = {"P": 1.0, "T": 2000.0, "e": 0.0, "a": 1.0, "i": 0.0, "node": 0.0, "omega": 0.0}
+    unknown = set(hold) - set(allowed)
+    if unknown:
+        raise InputError(
+            f"{sorted(unknown)[0]} is not an element; hold one of {', '.join(allowed)}"
+        )
+    try:
+        checked = Elements(**{**allowed, **hold}).to_dict()
+    except (TypeError, ValueError) as error:
+        raise InputError(f"cannot hold that: {error}") from None
+    return Holding({name: checked[name] for name in hold})
+
+
+def _period_range(period_range: tuple[float, float] | None) -> tuple[float, float] | None:
+    if period_range is None:
+        return None
+    shortest, longest = (float(value) for value in period_range)
+    if not 0.0 < shortest < longest < np.inf:
+        raise InputError(
+            f"the periods {shortest:g} to {longest:g} years are not a range; give the shortest, "
+            "above 0, and then a longer one"
+        )
+    return shortest, longest
+
+
+def _enough(o: Observations, held: Holding) -> None:
+    """Refuse what cannot be solved whatever the values are."""
+    needed = held.free + 1
+    if o.numbers < needed:
+        raise Undetermined(
+            f"{_count(len(o), 'measure')} in use with {_count(o.numbers, 'value')} (theta and rho "
+            f"count one each) for {held.free} unknowns: an orbit needs at least {needed}, that is "
+            f"{_count(-(-needed // 2), 'position')}. Measure more, or hold elements.",
+            code="too-few-measures",
+            known={"numbers": o.numbers, "unknowns": held.free},
+        )
+    both = (o.per_theta > 0.0) & (o.per_rho > 0.0)
+    epochs = np.unique(np.round(o.epoch, 4)).size
+    needed_epochs = -(-held.free // 2)
+    if epochs < needed_epochs:
+        where = "all at one epoch" if epochs == 1 else f"at only {epochs} epochs"
+        raise Undetermined(
+            f"the measures are {where}: motion shows only between at least {needed_epochs} epochs "
+            "well apart. Measure again in a later season.",
+            code="too-few-epochs",
+            known={"epochs": epochs},
+        )
+    if np.count_nonzero(both) < 2:
+        raise Undetermined(
+            "fewer than two measures have both theta and rho: the size of the orbit is not "
+            "determined. Measure some separations.",
+            code="too-few-positions",
+        )
+
+
+def _count(number: int, word: str) -> str:
+    return f"{number} {word}{'' if number == 1 else 's'}"
+
+
+def _determined(o: Observations, orbits: Refined, scale: float, t0: float) -> None:
+    """Refuse an orbit where a straight line, or any long period, does as well."""
+    best = float(orbits.chi2[0])
+    line = straight_motion(o)
+    if (line.chi2 - best) / scale < CURVATURE:
+        profile = period_profile(o)
+        raise Undetermined(
+            "a straight line fits as well as an orbit "
+            f"(chi2 {line.chi2:.1f} with 4 unknowns, {best:.1f} with {SIZE}): no curvature is "
+            f"shown yet. {_limit_text(profile, best, scale)} Measure again when the pair has moved "
+            "on, or with smaller errors.",
+            code="straight-line",
+            known=_known(line, profile, best, scale),
+        )
+    if open_ended(o, t0, orbits, scale):
+        profile = period_profile(o)
+        raise Undetermined(
+            "the period runs off the end of the search: orbits of any long period fit within two "
+            f"standard deviations. {_limit_text(profile, best, scale)} A longer arc would cure it; "
+            "an element known otherwise can be held.",
+            code="period-unbounded",
+            known=_known(line, profile, best, scale),
+        )
+
+
+def _limit_text(profile: PeriodProfile, best: float, scale: float) -> str:
+    limit = profile.lower_limit(min(best, profile.chi2.min()), scale)
+    return f"The period is longer than about {limit:.3g} years (two standard deviations)."
+
+
+def _known(
+    line: StraightMotion, profile: PeriodProfile, best: float, scale: float
+) -> dict[str, float]:
+    return {
+        "P_lower_limit": profile.lower_limit(min(best, profile.chi2.min()), scale),
+        "epoch": line.epoch,
+        "theta": line.theta,
+        "theta_sigma": line.theta_sigma,
+        "rho": line.rho,
+        "rho_sigma": line.rho_sigma,
+        "motion_north": line.motion_north,
+        "motion_east": line.motion_east,
+        "motion_sigma": line.motion_sigma,
+        "chi2_straight": line.chi2,
+        "chi2_orbit": best,
+    }
+
+
+def _elements(u: Any, t0: float, held: Holding, passage_near: float | None) -> Elements:
+    elements = elements_from_regular(u, t0)
+    if held.values:
+        elements = held.on(elements)
+    if passage_near is not None:
+        elements = elements.near(passage_near)
+    return elements
+
+
+def _alternatives(
+    orbits: Refined, t0: float, held: Holding, passage_near: float | None
+) -> Iterable[Alternative]:
+    for u, chi2 in zip(orbits.u[1:MOST_ALTERNATIVES], orbits.chi2[1:], strict=False):
+        yield Alternative(_elements(u, t0, held, passage_near), float(chi2))

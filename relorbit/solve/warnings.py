@@ -1,0 +1,113 @@
+"""What an observer should be told beside the numbers of a solution."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+
+import numpy as np
+
+from relorbit.measures.pair import Pair
+from relorbit.solve.observations import Observations
+from relorbit.solve.solution import Notice, Solution
+
+ENOUGH_COVERED = 0.75  # Aitken's rule: an orbit is worth computing once this much is covered
+CLOSE_RIVAL = 9.0  # rise of scaled chi2, three standard deviations, up to which a rival is named
+VAGUE = 0.2  # relative error of the period that is worth a warning
+POOR_FIT = 2.0  # reduced chi2 above which the measures disagree with their own errors
+PLAUSIBLE_MASS = (0.05, 300.0)  # total mass in solar masses: common practice, no published source
+
+
+def gather(solution: Solution, pair: Pair, observations: Observations) -> Solution:
+    """The solution with its warnings."""
+    notices = [*_of_the_orbit(solution), *_of_the_measures(solution, pair, observations)]
+    return replace(solution, warnings=tuple(notices))
+
+
+def _of_the_orbit(s: Solution) -> Iterator[Notice]:
+    scale = s.error_scale**2
+    covered = s.span / s.elements.P
+    if covered < ENOUGH_COVERED:
+        yield Notice(
+            "short-arc",
+            f"the measures cover {100 * covered:.0f} % of a revolution: the orbit is provisional, "
+            "and the errors, which suppose small ones, are too small",
+        )
+    rivals = [one for one in s.alternatives if (one.chi2 - s.chi2) / scale < CLOSE_RIVAL]
+    if rivals:
+        periods = ", ".join(f"{one.elements.P:.4g}" for one in rivals[:4])
+        yield Notice(
+            "rival-orbits", f"other orbits fit nearly as well, with periods of {periods} years"
+        )
+    sigma_P = s.sigma["P"]
+    if sigma_P is not None and sigma_P > VAGUE * s.elements.P:
+        yield Notice("period-uncertain", f"the period is only known to {sigma_P:.2g} years")
+    yield from _without_meaning(s)
+    if s.mass_total is not None:
+        low, high = PLAUSIBLE_MASS
+        if not low < s.mass_total.value < high:
+            yield Notice(
+                "mass-implausible",
+                f"a total mass of {s.mass_total.value:.3g} suns is not one of stars: check the "
+                "parallax (in mas), the separations (in arcsec) and the period",
+            )
+
+
+def _without_meaning(s: Solution) -> Iterator[Notice]:
+    sigma = s.sigma
+    if s.elements.e == 0.0:
+        yield Notice(
+            "circular", "a circle has no periastron: omega is 0 and T the passage of the node"
+        )
+    elif sigma["e"] is not None and s.elements.e < 2.0 * sigma["e"]:
+        yield Notice(
+            "nearly-circular",
+            "e does not differ from 0 by two standard deviations: T and omega are poorly known, "
+            "the place of the companion in its orbit is not",
+        )
+    if s.elements.i in (0.0, 180.0):
+        yield Notice("face-on", "a face-on orbit has no node: node is 0 and omega is counted from it")
+    elif sigma["node"] is not None and sigma["node"] > 30.0:
+        yield Notice(
+            "nearly-face-on",
+            "the orbit is nearly face-on: node and omega are poorly known, their "
+            + ("sum is not" if s.elements.i < 90.0 else "difference is not"),
+        )
+
+
+def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notice]:
+    assumed = int(o.assumed.sum())
+    if assumed:
+        yield Notice(
+            "default-errors",
+            f"{assumed} of {len(o)} measures bring no errors and were given those usual for their "
+            "technique",
+        )
+    if s.error_scale > 1.0:
+        yield Notice(
+            "scaled-errors",
+            f"reduced chi2 is {s.reduced_chi2:.2f}: the errors given are {s.error_scale:.2f} times "
+            "the formal ones",
+        )
+    if s.reduced_chi2 > POOR_FIT:
+        yield Notice(
+            "poor-fit",
+            "the measures scatter more than their errors allow: look for slips among the largest "
+            "residuals",
+        )
+    with np.errstate(invalid="ignore"):
+        wrong_side = s.residuals.used & (np.abs(s.residuals.d_theta) > 90.0)
+    if wrong_side.any():
+        epochs = ", ".join(f"{epoch:.2f}" for epoch in s.residuals.epoch[wrong_side][:4])
+        yield Notice(
+            "wrong-side",
+            f"{int(wrong_side.sum())} measures lie on the other side of the primary, perhaps a "
+            f"swapped quadrant: {epochs}",
+        )
+    left = int(np.count_nonzero(pair.measures.equinox[o.rows] != "J2000"))
+    if left:
+        yield Notice(
+            "not-at-J2000",
+            f"theta of {left} measures is not at equinox J2000: give the position of the pair so "
+            "that it can be brought there",
+        )
