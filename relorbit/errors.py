@@ -73,3 +73,12 @@ class Undetermined(RelorbitError):
         self.code = code
         self.known = dict(known or {})
         super().__init__(reason)
+
+    def to_dict(self) -> dict:
+        """For JSON, schema relorbit/undetermined/1."""
+        return {
+            "schema": "relorbit/undetermined/1",
+            "code": self.code,
+            "reason": self.reason,
+            "known": self.known,
+        }

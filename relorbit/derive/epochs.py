@@ -11,6 +11,7 @@ from relorbit.measures.dates import julian_years
 from relorbit.orbit.kepler import FloatArray
 
 MOST_ROWS = 100_000
+DEFAULT_STEPS = 10
 DAYS_A_YEAR = 365.25
 MONTHS_A_YEAR = 12.0
 _STEP = re.compile(r"\s*([0-9]*\.?[0-9]+)\s*([a-zA-Z]*)\s*")
@@ -54,3 +55,27 @@ def epoch_grid(first: float, last: float, step: float) -> FloatArray:
     if count > MOST_ROWS:
         raise InputError(f"{count:.0f} epochs are more than {MOST_ROWS}; take a longer step")
     return first + step * np.arange(int(count))
+
+
+def chosen_epochs(
+    at: str | None, first: str | None, last: str | None, step: str, today: float
+) -> FloatArray:
+    """Epochs as an observer asks for them, Julian years.
+
+    Parameters
+    ----------
+    at : str or None
+        Epochs with commas between; then nothing else is looked at.
+    first, last : str or None
+        Ends of a range; by default `today`, and ten steps later.
+    step : str
+        See `step_in_years`.
+    today : float
+        Julian year.
+    """
+    if at is not None:
+        return np.array([epoch_from_text(text.strip()) for text in at.split(",")])
+    begin = today if first is None else epoch_from_text(first)
+    years = step_in_years(step)
+    end = begin + DEFAULT_STEPS * years if last is None else epoch_from_text(last)
+    return epoch_grid(begin, end, years)

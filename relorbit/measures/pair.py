@@ -258,6 +258,17 @@ class Pair:
         """This pair with other measures."""
         return replace(self, measures=measures)
 
+    def with_identity(self, **said: Any) -> Pair:
+        """This pair with other identity fields.
+
+        Position as degrees or sexagesimal text, numbers as numbers or text. New `designations`
+        are added to those there are. Raises InputError for a value that cannot be.
+        """
+        if "designations" in said:
+            added = [name for name in said["designations"] if name not in self.designations]
+            said["designations"] = (*self.designations, *added)
+        return replace(self, **said)
+
     def with_orbit(self, recorded: RecordedOrbit) -> Pair:
         """This pair with one more orbit on record, in place of one of the same name."""
         others = tuple(orbit for orbit in self.orbits if orbit.name != recorded.name)
@@ -293,6 +304,11 @@ class Pair:
             columns[column.name] = [_number_or_none(v) for v in values]
         orbits = [orbit.to_dict() for orbit in self.orbits]
         return {**self.identity(), "measures": columns, "orbits": orbits}
+
+
+def new_pair(name: str) -> Pair:
+    """A pair without measures."""
+    return Pair(name, Measures.from_columns({"epoch": [], "theta": [], "rho": []}))
 
 
 def right_ascension(text: str | float) -> float:

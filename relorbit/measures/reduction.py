@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from relorbit.errors import InputError
+from relorbit.measures.pair import Pair
 from relorbit.measures.table import Measures
 
 MAS = np.deg2rad(1.0) / 3.6e6
@@ -86,6 +87,16 @@ def reduce_to_j2000(
     return replace(
         measures, theta=theta, theta_obs=theta_obs, epoch_obs=received, equinox=label
     )
+
+
+def reduce_pair(pair: Pair) -> tuple[Pair, int]:
+    """The pair with theta at equinox J2000 where its position is known, and how many changed."""
+    if pair.ra_deg is None or pair.dec_deg is None:
+        return pair, 0
+    motion = pair.pm_ra_mas_yr, pair.pm_dec_mas_yr
+    measures = reduce_to_j2000(pair.measures, pair.ra_deg, pair.dec_deg, *motion)
+    changed = (pair.measures.equinox != "J2000") & pair.measures.has_theta
+    return pair.with_measures(measures), int(np.count_nonzero(changed))
 
 
 def pole_angle(place: NDArray[np.float64], years: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -89,6 +89,16 @@ def read_pair(path: str | PathLike[str], *, allow_any_epoch: bool = False) -> Pa
         raise InputError(f"the header's pair: {error}", path=path) from None
 
 
+def require_pair_file(path: str | PathLike[str]) -> None:
+    """Raise InputError where `path` is a plain list, which cannot keep an orbit."""
+    if not ecsv.is_ecsv(cells.physical_lines(read_text(path))):
+        raise InputError(
+            "is a plain list, which has no place for an orbit; make a pair file of it with "
+            "relorbit intake",
+            path=path,
+        )
+
+
 def write_pair(pair: Pair, path: str | PathLike[str]) -> None:
     """Write a pair file, whole or not at all; the last version is kept as ``NAME.previous``.
 
@@ -127,6 +137,8 @@ def _identity(
         raise InputError(
             f"the header's pair has {strange}; it may have {', '.join(sorted(known))}", path=path
         )
+    if "name" in who:  # a name such as 61 is a number to YAML, when written by hand
+        who["name"] = str(who["name"])
     try:
         orbits = tuple(RecordedOrbit.from_dict(one) for one in record.get("orbits") or ())
     except (InputError, TypeError, ValueError) as error:

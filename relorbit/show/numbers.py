@@ -8,7 +8,6 @@ from datetime import datetime, timedelta
 from itertools import pairwise
 
 MOST_DECIMALS = 8
-GAP = "  "
 _J2000 = datetime(2000, 1, 1, 12)
 _MONTHS = ("Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec")
 
@@ -110,7 +109,12 @@ def dates_of(epochs: Sequence[float]) -> list[str]:
 
 
 def table(
-    header: Sequence[str], rows: Sequence[Sequence[str]], align: str, units: Sequence[str] = ()
+    header: Sequence[str],
+    rows: Sequence[Sequence[str]],
+    align: str,
+    units: Sequence[str] = (),
+    *,
+    gap: str = "  ",
 ) -> str:
     """A plain table, without a line end after the last row.
 
@@ -123,6 +127,8 @@ def table(
         One letter a column: l left, r right, "." on the decimal point.
     units : sequence of str, optional
         A second line under the header.
+    gap : str
+        What stands between two columns.
     """
     heads = [list(header), *([list(units)] if units else [])]
     columns = []
@@ -133,7 +139,7 @@ def table(
         cells = [line[slot] for line in heads] + cells
         width = max(map(len, cells))
         columns.append([c.ljust(width) if kind == "l" else c.rjust(width) for c in cells])
-    lines = [GAP.join(parts).rstrip() for parts in zip(*columns, strict=True)]
+    lines = [gap.join(parts).rstrip() for parts in zip(*columns, strict=True)]
     rule = "-" * max(map(len, lines))
     return "\n".join([*lines[: len(heads)], rule, *lines[len(heads) :]])
 

@@ -14,7 +14,6 @@ import numpy as np
 from relorbit.orbit.elements import NAMES, Elements
 from relorbit.show.numbers import (
     angle,
-    calendar_date,
     dates_of,
     decimals_for,
     error_text,
@@ -39,7 +38,7 @@ UNITS = {
 }  # fmt: skip
 MEANING = {
     "P": "period", "T": "periastron", "e": "eccentricity", "a": "semimajor axis",
-    "i": "inclination", "node": "node", "omega": "periastron from node",
+    "i": "inclination", "node": "node", "omega": "arg. periastron",
 }  # fmt: skip
 TURNING = {
     "periastron": "periastron", "closest": "closest on the sky", "widest": "widest on the sky",
@@ -160,17 +159,10 @@ def _why_no_error(name: str, elements: Elements, sigma: float | None) -> str:
     """Why an element has no error, or no meaning."""
     if known(sigma):
         return ""
-    face_on = elements.i in (0.0, 180.0)
-    if face_on and name in ("i", "node", "omega"):
-        why = {"i": "error undefined", "node": "undefined, put at 0", "omega": "from north"}
-        if name == "omega" and elements.e == 0.0:
-            return "undefined, put at 0 (circular)"
-        return f"{why[name]} (face-on)"
     if elements.e == 0.0 and name in ("T", "omega"):
-        where = "position angle 0" if face_on else "node"
-        return {"T": f"passage of {where} (circular)", "omega": "undefined, put at 0 (circular)"}[
-            name
-        ]
+        return "undefined: circular"
+    if elements.i in (0.0, 180.0) and name in ("i", "node", "omega"):
+        return "as node: face-on" if name == "omega" else "undefined: face-on"
     return "error unknown"
 
 
@@ -308,16 +300,78 @@ def residuals_table(residuals: Residuals) -> str:
                 str(r.observer[k]),
             ]
         )
-    heads = ["", "epoch", "theta", "rho", "theta", "rho", "across", "/s", "/s", "by", ""]
-    units = ["", "", "deg", '"', "O-C", "O-C", "O-C", "th", "rho", "", ""]
+    heads = ["", "", "", "", "O-C", "O-C", "O-C", "O-C", "O-C", "", ""]
+    units = ["", "epoch", "theta", "rho", "theta", "rho", "across", "th/s", "rho/s",
+             "technique", "observer"]  # fmt: skip
     note = (
-        "O-C of theta in degrees, of rho and across (theta as arc) in arcsec; "
-        "/s: the same in units of the error."
+        "theta in degrees, rho and across (theta as arc) in arcsec; th/s and rho/s: O-C over "
+        "the error of the measure"
     )
     if not r.used.all():
-        note += f" x: not used ({int(np.count_nonzero(~r.used))})."
-    return _tight(table(heads, rows, "l........ll", units)) + "\n" + _wrapped(note)
+        note += f"; x: not used ({int(np.count_nonzero(~r.used))})"
+    return table(heads, rows, "l........ll", units, gap=" ") + "\n" + _wrapped(note)
 
 
 def _places(sigma: float, without: int) -> int:
     return max(decimals_for(sigma), 0) if known(sigma) and sigma > 0.0 else without
+
+
+def ephemeris_rows(ephemeris: Ephemeris) -> list[list[str]]:
+    """Julian year, calendar date, theta, its sigma, rho, its sigma, as text, a row an epoch."""
+    epochs = ephemeris.epoch.tolist()
+    dates = dates_of(epochs)
+    rows = []
+    for epoch, date, row in zip(epochs, dates, ephemeris.rows(), strict=True):
+        theta_sigma, rho_sigma = row["theta_sigma"], row["rho_sigma"]
+        theta = angle(row["theta"], _places(theta_sigma, THETA_DECIMALS))
+        rho, rho_error = with_error(row["rho"], rho_sigma, RHO_DECIMALS)
+        theta_error = error_text(theta_sigma)
+        if known(theta_sigma) and theta_sigma >= UNKNOWN_ANGLE:
+            theta_error = "any"
+        rows.append([fixed(epoch, 3), date, theta, theta_error, rho, rho_error])
+    return rows
+
+
+def ephemeris_table(ephemeris: Ephemeris) -> str:
+    """Predicted positions with their errors, where the orbit brings errors."""
+    rows = ephemeris_rows(ephemeris)
+    heads = ["epoch", "date (TT)", "theta", "sigma", "rho", "sigma"]
+    units = ["Julian yr", "", "deg", "deg", "arcsec", "arcsec"]
+    keep = range(6)
+    if not np.isfinite(ephemeris.rho_sigma).any():
+        keep = (0, 1, 2, 4)
+    return table(
+        [heads[k] for k in keep],
+        [[row[k] for k in keep] for row in rows],
+        "".join(".l...."[k] for k in keep),
+        [units[k] for k in keep],
+    )
+
+
+def turning_rows(points: Sequence[TurningPoint]) -> list[list[str]]:
+    """What, Julian year, its sigma, date no finer than that, theta and rho, as text."""
+    rows = []
+    for point in points:
+        epoch, sigma = with_error(point.epoch, point.epoch_sigma, 2)
+        rows.append([TURNING[point.kind], epoch, sigma, rough_date(point.epoch, point.epoch_sigma),
+                     angle(point.theta, 1), significant(point.rho, 3)])  # fmt: skip
+    return rows
+
+
+def turning_points_table(points: Sequence[TurningPoint]) -> str:
+    """The next periastron, closest and widest apparent separation."""
+    return table(
+        ["next", "epoch", "sigma", "date", "theta", "rho"], turning_rows(points), "l..l..",
+        ["", "Julian yr", "yr", "", "deg", "arcsec"],
+    )  # fmt: skip
+
+
+def warnings_text(warnings: Sequence[Notice]) -> str:
+    """Each warning as a wrapped paragraph; an empty string where there is none."""
+    return "\n".join(
+        textwrap.fill(f"Note: {one.text}", WIDTH, subsequent_indent="      ") for one in warnings
+    )
+
+
+def _wrapped(text: str) -> str:
+    return "\n".join(textwrap.fill(line, WIDTH) for line in text.split("\n"))

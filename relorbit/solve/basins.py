@@ -13,8 +13,8 @@ from relorbit.solve.refine import Holding, Problem, Refined, polar_problem, refi
 from relorbit.solve.search import ECCENTRICITIES, period_grid, search
 
 STARTS = 32  # minima of the map that are followed down
-FIRST_STEPS, LATER_STEPS = 6, 25
-ALWAYS_FOLLOWED = 10  # best orbits that go on whatever their chi2
+FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 200
+ALWAYS_FOLLOWED = 10, 4  # best orbits that go on whatever their chi2, at first and at last
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
 SAME = 1e-4  # orbits whose coordinates differ by less than this, in units of their size, are one
@@ -54,10 +54,9 @@ def find_basins(
 def settle(problem: Problem, u: FloatArray, held: Holding) -> Refined:
     """Distinct minima of the problem, best first, from near starts u, shape (c, 7)."""
     rough = refine(problem, u, held, most_iterations=LATER_STEPS, tolerance=1e-2)
-    keep = _distinct(rough.u, rough.chi2)
-    keep = keep[_hopeful(rough.chi2[keep])]
-    fine = refine(problem, rough.u[keep], held)
-    keep = _distinct(fine.u, fine.chi2)
+    keep = _near_the_best(_distinct(rough.u, rough.chi2), rough.chi2)
+    fine = refine(problem, rough.u[keep], held, most_iterations=LAST_STEPS)
+    keep = _near_the_best(_distinct(fine.u, fine.chi2), fine.chi2)
     return Refined(fine.u[keep], fine.chi2[keep], rough.iterations + fine.iterations)
 
 
@@ -94,15 +93,20 @@ def _follow(problem: Problem, u: FloatArray, held: Holding) -> FloatArray:
     """Bring starts down, letting go of those that meet another or lead nowhere."""
     first = refine(problem, u, held, most_iterations=FIRST_STEPS, tolerance=1e-2)
     keep = _distinct(first.u, first.chi2)
-    keep = keep[_hopeful(first.chi2[keep])]
+    keep = keep[_hopeful(first.chi2[keep], ALWAYS_FOLLOWED[0])]
     later = refine(problem, first.u[keep], held, most_iterations=LATER_STEPS, tolerance=1e-2)
     keep = _distinct(later.u, later.chi2)
-    return later.u[keep[_hopeful(later.chi2[keep])]]
+    return later.u[keep[_hopeful(later.chi2[keep], ALWAYS_FOLLOWED[1])]]
 
 
-def _hopeful(chi2: FloatArray) -> NDArray[np.bool_]:
+def _hopeful(chi2: FloatArray, always: int) -> NDArray[np.bool_]:
     """Which of some orbits in rising order of chi2 are worth following."""
-    return (chi2 <= HOPELESS * chi2[0]) | (np.arange(chi2.size) < ALWAYS_FOLLOWED)
+    return (chi2 <= HOPELESS * chi2[0]) | (np.arange(chi2.size) < always)
+
+
+def _near_the_best(order: NDArray[np.intp], chi2: FloatArray) -> NDArray[np.intp]:
+    """Those of some orbits in rising order of chi2 that an observer may still consider."""
+    return order[chi2[order] <= HOPELESS * chi2[order[0]]]
 
 
 def _distinct(u: FloatArray, chi2: FloatArray) -> NDArray[np.intp]:

@@ -18,6 +18,7 @@ PROFILE_STEPS = 25
 VAGUE_PERIOD = 0.25  # error of ln P above which the valley of chi2 is too bent to be followed
 FOLLOW_STEP = 0.3  # in ln P, when an orbit is followed to longer periods
 PROFILE_SHORTEST, PROFILE_LONGEST = 0.5, 300.0  # in units of the time span
+ONE_SIGMA = 1.0  # rise of (scaled) chi2 up to which any long period does as well as the best
 TWO_SIGMA = 4.0  # rise of (scaled) chi2 at a limit of two standard deviations
 
 
@@ -148,23 +149,30 @@ def period_profile(observations: Observations) -> PeriodProfile:
     return PeriodProfile(periods, settled.chi2.reshape(grid.T.shape).min(axis=1))
 
 
-def open_ended(observations: Observations, t0: float, orbits: Refined, scale: float) -> bool:
-    """Whether orbits of any long period fit within two standard deviations of the best.
+def rise_at_long_periods(
+    observations: Observations, t0: float, orbits: Refined, scale: float
+) -> float:
+    """By how much (scaled) chi2 rises towards the longest periods; infinity beyond two sigma.
 
     Where the period of the best orbit is vague the whole profile is computed. Else every orbit
-    in `orbits` that fits so well is followed to longer periods, the other unknowns refitted at
-    each step, until chi2 has risen too far or the end of the profile is reached.
+    in `orbits` that fits within two standard deviations of the best is followed to longer
+    periods, the other unknowns refitted at each step, until chi2 has risen too far or the end of
+    the profile is reached.
     """
     problem = polar_problem(observations, t0)
-    limit = float(orbits.chi2[0]) + TWO_SIGMA * scale
+    best = float(orbits.chi2[0])
+    limit = best + TWO_SIGMA * scale
     if scale * covariance(problem, orbits.u[0])[0, 0] > VAGUE_PERIOD**2:
-        return bool(period_profile(observations).chi2[-3:].min() < limit)
-    near = orbits.u[orbits.chi2 < limit]
-    return any(_stays_below(problem, u, limit, observations.span) for u in near)
+        end = period_profile(observations).chi2[-3:].min()
+    else:
+        near = orbits.u[orbits.chi2 < limit]
+        end = min(_chi2_at_the_end(problem, u, limit, observations.span) for u in near)
+    return float(max(end - best, 0.0) / scale) if end < limit else np.inf
 
 
-def _stays_below(problem: Problem, u: FloatArray, limit: float, span: float) -> bool:
+def _chi2_at_the_end(problem: Problem, u: FloatArray, limit: float, span: float) -> float:
     end = np.log(PROFILE_LONGEST * span)
+    chi2 = np.inf
     while u[0] < end:
         # along the valley: the other unknowns follow ln P by the normal equations
         _, J = problem.with_jacobian(u[None])
@@ -175,7 +183,7 @@ def _stays_below(problem: Problem, u: FloatArray, limit: float, span: float) -> 
         if e >= 0.999:
             u[1:3] *= 0.999 / e
         settled = refine(problem, u, None, 2 * PROFILE_STEPS, 1e-2, columns=slice(1, 7))
-        if settled.chi2[0] > limit:
-            return False
-        u = settled.u[0]
-    return True
+        u, chi2 = settled.u[0], float(settled.chi2[0])
+        if chi2 > limit:
+            return np.inf
+    return chi2

@@ -150,17 +150,17 @@ def _normal_points(data: SkyData) -> tuple[FloatArray, FloatArray]:
 
 
 def _phase_bins(turns: FloatArray, values: FloatArray) -> FloatArray:
-    """Share values, shape (f, n), out over bins of phase of turns, shape (p, n): (p, f, BINS)."""
+    """Share values, shape (f, n), out over bins of phase of turns, shape (p, n): (f, p, BINS)."""
     place = np.remainder(turns, 1.0) * BINS
     left = np.minimum(place.astype(np.intp), BINS - 1)
     share = place - left
     base = BINS * np.arange(left.shape[0])[:, None]
     both = np.concatenate([(base + left).ravel(), (base + (left + 1) % BINS).ravel()])
     shares = np.concatenate([1.0 - share, share])
-    fields = np.empty((left.shape[0], values.shape[0], BINS))
+    fields = np.empty((values.shape[0], left.shape[0], BINS))
     for slot, value in enumerate(values):
         counts = np.bincount(both, (shares * value).ravel(), minlength=left.shape[0] * BINS)
-        fields[:, slot] = counts.reshape(-1, BINS)
+        fields[slot] = counts.reshape(-1, BINS)
     return fields
 
 
@@ -177,28 +177,74 @@ def _kernels(e: float) -> NDArray[np.complex128]:
 
 
 def _correlations(spectra: NDArray, kernels: NDArray) -> NDArray:
-    """Every spectrum, (p, f, h), with every kernel, (k, h), back in T: (f k, p, bins)."""
-    products = np.moveaxis(spectra, 1, 0)[:, None] * kernels[:, None]
-    return np.fft.irfft(products, axis=-1).reshape(-1, spectra.shape[0], 2 * kernels.shape[1] - 2)
+    """Every spectrum, (f, p, h), with every kernel, (k, h), back in T: (f k, p, bins)."""
+    products = spectra[:, None] * kernels[:, None]
+    return np.fft.irfft(products, axis=-1).reshape(-1, spectra.shape[1], 2 * kernels.shape[1] - 2)
 
 
 def _gain(spectra: NDArray, kernels: NDArray) -> NDArray:
     """By how much the best A, B, F, G at each T lower chi2, shape (p, BINS).
 
-    The gain is b' N^-1 b with the normal matrix N of (A, F, B, G) in 2-by-2 blocks.
+    The gain is b' N^-1 b with the normal matrix N of (A, F, B, G) in 2-by-2 blocks A, B, B', C
+    and b in the halves p and q.
     """
-    a11, a12, a22, b11, b12, b22, c11, c12, c22 = _correlations(spectra[:, :3], kernels[:3])
-    p1, p2, q1, q2 = _correlations(spectra[:, 3:], kernels[3:])
+    a11, a12, a22, b11, b12, b22, c11, c12, c22 = _correlations(spectra[:3], kernels[:3])
+    p1, p2, q1, q2 = _correlations(spectra[3:], kernels[3:])
+    # in place wherever an array is not needed again: new memory costs as much as the arithmetic
     ridge = 8.0 * np.finfo(a11.dtype).eps
-    scale = 1.0 / (a11 * a22 * (1.0 + ridge) - a12 * a12 + np.finfo(a11.dtype).tiny)
-    # K = A^-1 B, then the Schur complement C - B' K
-    k11, k12 = (a22 * b11 - a12 * b12) * scale, (a22 * b12 - a12 * b22) * scale
-    k21, k22 = (a11 * b12 - a12 * b11) * scale, (a11 * b22 - a12 * b12) * scale
-    s11 = c11 * (1.0 + ridge) - (b11 * k11 + b12 * k21)
-    s22 = c22 * (1.0 + ridge) - (b12 * k12 + b22 * k22)
-    s12 = c12 - (b11 * k12 + b12 * k22)
-    r1, r2 = q1 - (k11 * p1 + k21 * p2), q2 - (k12 * p1 + k22 * p2)
-    gain = (a22 * p1 * p1 - 2.0 * a12 * p1 * p2 + a11 * p2 * p2) * scale
-    determinant = s11 * s22 - s12 * s12
-    rest = s22 * r1 * r1 - 2.0 * s12 * r1 * r2 + s11 * r2 * r2
-    return gain + np.where(determinant > ridge * s11 * s22, rest / np.where(determinant > 0, determinant, 1.0), 0.0)
+    scale = a11 * a22
+    scale *= 1.0 + ridge
+    scale -= a12 * a12
+    scale += np.finfo(a11.dtype).tiny
+    np.reciprocal(scale, out=scale)
+    i11, i12, i22 = a22 * scale, a12 * scale, a11 * scale  # the inverse of A, i12 with its sign lost
+    k11, k12 = i11 * b11, i11 * b12  # K = A^-1 B
+    k11 -= i12 * b12
+    k12 -= i12 * b22
+    k21, k22 = i22 * b12, i22 * b22
+    k21 -= i12 * b11
+    k22 -= i12 * b12
+    # the Schur complement C - B' K, and what is left of the right side
+    s11, s12, s22 = c11, c12, c22
+    s11 *= 1.0 + ridge
+    s11 -= b11 * k11
+    s11 -= b12 * k21
+    s22 *= 1.0 + ridge
+    s22 -= b12 * k12
+    s22 -= b22 * k22
+    s12 -= b11 * k12
+    s12 -= b12 * k22
+    k11 *= p1
+    k21 *= p2
+    k12 *= p1
+    k22 *= p2
+    q1 -= k11
+    q1 -= k21
+    q2 -= k12
+    q2 -= k22
+    return _quadratic(i11, i12, i22, p1, p2) + _solved_quadratic(s11, s12, s22, q1, q2, ridge)
+
+
+def _quadratic(i11: NDArray, i12: NDArray, i22: NDArray, p1: NDArray, p2: NDArray) -> NDArray:
+    """i11 p1^2 - 2 i12 p1 p2 + i22 p2^2; i11, i12 and i22 are overwritten."""
+    i11 *= p1
+    i12 *= p2
+    i12 *= 2.0
+    i11 -= i12
+    i11 *= p1
+    i22 *= p2
+    i22 *= p2
+    i11 += i22
+    return i11
+
+
+def _solved_quadratic(
+    s11: NDArray, s12: NDArray, s22: NDArray, r1: NDArray, r2: NDArray, ridge: float
+) -> NDArray:
+    """r' S^-1 r, and 0 where S is singular to rounding; the arguments are overwritten."""
+    both = s11 * s22
+    determinant = both - s12 * s12
+    both *= ridge
+    sound = determinant > both
+    rest = _quadratic(s22, s12, s11, r1, r2)
+    return np.divide(rest, determinant, out=np.zeros_like(rest), where=sound)

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from relorbit.measures.pair import RecordedOrbit
 from relorbit.orbit.elements import NAMES, Elements, thiele_innes_from_campbell
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import Uncertainty, campbell_covariance
@@ -124,6 +125,23 @@ class Solution:
             value = float(np.sqrt(self._covariance[slot, slot])) * scale
             out[name] = value if np.isfinite(value) and name not in self.held else None
         return out
+
+    def to_record(
+        self, name: str, *, recorded: str = "", source: str = "", note: str = ""
+    ) -> RecordedOrbit:
+        """This orbit as one to keep with the pair, its errors included."""
+        return RecordedOrbit(
+            name,
+            self.elements,
+            self.sigma,
+            self.uncertainty.reference_epoch,
+            self.uncertainty.covariance,
+            self.chi2,
+            self.dof,
+            recorded,
+            source,
+            note,
+        )
 
     def to_dict(self) -> dict[str, Any]:
         """The JSON of ``relorbit solve --json``, schema relorbit/solution/1.

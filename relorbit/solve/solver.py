@@ -14,16 +14,18 @@ from relorbit.orbit.regular import SIZE, Uncertainty, elements_from_regular
 from relorbit.orbit.third_law import total_mass
 from relorbit.solve.basins import find_basins
 from relorbit.solve.limits import (
+    ONE_SIGMA,
+    TWO_SIGMA,
     PeriodProfile,
     StraightMotion,
-    open_ended,
     period_profile,
+    rise_at_long_periods,
     straight_motion,
 )
 from relorbit.solve.observations import Observations, observe
 from relorbit.solve.refine import Holding, Refined, covariance, polar_problem
 from relorbit.solve.residuals import residuals
-from relorbit.solve.solution import Alternative, Solution
+from relorbit.solve.solution import Alternative, Notice, Solution
 from relorbit.solve.warnings import gather
 
 # An orbit has three unknowns more than a straight line; for chance alone to lower chi2 by this
@@ -74,8 +76,9 @@ def solve(
     t0, orbits = find_basins(observations, held, _period_range(period_range))
     dof = observations.numbers - held.free
     scale = max(1.0, float(orbits.chi2[0]) / dof)
+    open_period = None
     if not held.values:
-        _determined(observations, orbits, scale, t0)
+        open_period = _determined(observations, orbits, scale, t0)
     u = orbits.u[0]
     matrix = scale * covariance(polar_problem(observations, t0), u, held)
     elements = _elements(u, t0, held, passage_near)
@@ -103,7 +106,7 @@ def solve(
         parallax_mas=parallax,
         parallax_err_mas=pair.parallax_err_mas,
     )
-    return gather(solution, pair, observations)
+    return gather(solution, pair, observations, [open_period] if open_period else [])
 
 
 def _holding(hold: Mapping[str, Any] | None) -> Holding:
@@ -169,8 +172,11 @@ def _count(number: int, word: str) -> str:
     return f"{number} {word}{'' if number == 1 else 's'}"
 
 
-def _determined(o: Observations, orbits: Refined, scale: float, t0: float) -> None:
-    """Refuse an orbit where a straight line, or any long period, does as well."""
+def _determined(o: Observations, orbits: Refined, scale: float, t0: float) -> Notice | None:
+    """Refuse an orbit where a straight line, or any long period, does as well.
+
+    Returns a warning where long periods are only worse by less than two standard deviations.
+    """
     best = float(orbits.chi2[0])
     line = straight_motion(o)
     if (line.chi2 - best) / scale < CURVATURE:
@@ -181,17 +187,25 @@ def _determined(o: Observations, orbits: Refined, scale: float, t0: float) -> No
             f"shown yet. {_limit_text(profile, best, scale)} Measure again when the pair has moved "
             "on, or with smaller errors.",
             code="straight-line",
-            known=_known(line, profile, best, scale),
+            known=_known(o, orbits, t0, line, profile, scale),
         )
-    if open_ended(o, t0, orbits, scale):
-        profile = period_profile(o)
+    rise = rise_at_long_periods(o, t0, orbits, scale)
+    if rise >= TWO_SIGMA:
+        return None
+    profile = period_profile(o)
+    limit = _limit_text(profile, best, scale)
+    if rise < ONE_SIGMA:
         raise Undetermined(
-            "the period runs off the end of the search: orbits of any long period fit within two "
-            f"standard deviations. {_limit_text(profile, best, scale)} A longer arc would cure it; "
-            "an element known otherwise can be held.",
+            "the period runs off the end of the search: orbits of any long period fit as well as "
+            f"the best. {limit} A longer arc would cure it; an element known otherwise can be "
+            "held.",
             code="period-unbounded",
-            known=_known(line, profile, best, scale),
+            known=_known(o, orbits, t0, line, profile, scale),
         )
+    return Notice(
+        "period-open",
+        f"orbits of any long period fit within two standard deviations. {limit}",
+    )
 
 
 def _limit_text(profile: PeriodProfile, best: float, scale: float) -> str:
@@ -200,8 +214,15 @@ def _limit_text(profile: PeriodProfile, best: float, scale: float) -> str:
 
 
 def _known(
-    line: StraightMotion, profile: PeriodProfile, best: float, scale: float
-) -> dict[str, float]:
+    o: Observations,
+    orbits: Refined,
+    t0: float,
+    line: StraightMotion,
+    profile: PeriodProfile,
+    scale: float,
+) -> dict[str, Any]:
+    """What the measures do say, for programs."""
+    best = float(orbits.chi2[0])
     return {
         "P_lower_limit": profile.lower_limit(min(best, profile.chi2.min()), scale),
         "epoch": line.epoch,
@@ -214,6 +235,8 @@ def _known(
         "motion_sigma": line.motion_sigma,
         "chi2_straight": line.chi2,
         "chi2_orbit": best,
+        "best_of_many": elements_from_regular(orbits.u[0], t0).to_dict(),
+        "dof_orbit": o.numbers - SIZE,
     }
 
 

@@ -14,13 +14,18 @@ from relorbit.solve.solution import Notice, Solution
 ENOUGH_COVERED = 0.75  # Aitken's rule: an orbit is worth computing once this much is covered
 CLOSE_RIVAL = 9.0  # rise of scaled chi2, three standard deviations, up to which a rival is named
 VAGUE = 0.2  # relative error of the period that is worth a warning
+WELL_KNOWN_E = 0.2  # error of e up to which an orbit can be called circular
+VAGUE_NODE = 30.0  # error of the node, degrees, that is worth a warning
+NEARLY_FACE_ON = 60.0  # how far from edge-on, degrees, an orbit is nearly face-on
 POOR_FIT = 2.0  # reduced chi2 above which the measures disagree with their own errors
 PLAUSIBLE_MASS = (0.05, 300.0)  # total mass in solar masses: common practice, no published source
 
 
-def gather(solution: Solution, pair: Pair, observations: Observations) -> Solution:
-    """The solution with its warnings."""
-    notices = [*_of_the_orbit(solution), *_of_the_measures(solution, pair, observations)]
+def gather(
+    solution: Solution, pair: Pair, observations: Observations, found: list[Notice]
+) -> Solution:
+    """The solution with its warnings, those `found` during the fit first."""
+    notices = [*found, *_of_the_orbit(solution), *_of_the_measures(solution, pair, observations)]
     return replace(solution, warnings=tuple(notices))
 
 
@@ -59,7 +64,7 @@ def _without_meaning(s: Solution) -> Iterator[Notice]:
         yield Notice(
             "circular", "a circle has no periastron: omega is 0 and T the passage of the node"
         )
-    elif sigma["e"] is not None and s.elements.e < 2.0 * sigma["e"]:
+    elif sigma["e"] is not None and s.elements.e < 2.0 * sigma["e"] < 2.0 * WELL_KNOWN_E:
         yield Notice(
             "nearly-circular",
             "e does not differ from 0 by two standard deviations: T and omega are poorly known, "
@@ -67,7 +72,11 @@ def _without_meaning(s: Solution) -> Iterator[Notice]:
         )
     if s.elements.i in (0.0, 180.0):
         yield Notice("face-on", "a face-on orbit has no node: node is 0 and omega is counted from it")
-    elif sigma["node"] is not None and sigma["node"] > 30.0:
+    elif (
+        sigma["node"] is not None
+        and sigma["node"] > VAGUE_NODE
+        and abs(s.elements.i - 90.0) > NEARLY_FACE_ON
+    ):
         yield Notice(
             "nearly-face-on",
             "the orbit is nearly face-on: node and omega are poorly known, their "

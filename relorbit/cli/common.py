@@ -1,0 +1,186 @@
+"""What several verbs share: options, reading the pair, printing."""
+
+from __future__ import annotations
+
+import argparse
+import json
+import sys
+import threading
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from typing import TYPE_CHECKING, Any
+
+from relorbit.errors import InputError
+
+if TYPE_CHECKING:
+    from relorbit.derive.ephemeris import AnyOrbit
+    from relorbit.measures.pair import Pair
+    from relorbit.orbit.elements import Elements
+
+
+def add_pair(parser: argparse.ArgumentParser, optional: bool = False) -> None:
+    parser.add_argument(
+        "pair",
+        metavar="PAIR",
+        nargs="?" if optional else None,
+        help="a pair file (ECSV), or a plain list with a header line",
+    )
+    parser.add_argument(
+        "--any-epoch", action="store_true", help="also take epochs before 1600 or after 2200"
+    )
+
+
+def add_json(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("--json", action="store_true", help="print JSON instead of a table")
+
+
+def add_fit(parser: argparse.ArgumentParser) -> None:
+    """Options of a fit, for every verb that may make one."""
+    parser.add_argument(
+        "--hold",
+        action="append",
+        default=[],
+        metavar="ELEMENT=VALUE",
+        help="keep an element at a value, such as e=0 or P=41.6; may be given several times",
+    )
+    parser.add_argument(
+        "--epoch-range", metavar="FIRST:LAST", help="fit only measures of these years"
+    )
+    parser.add_argument(
+        "--period-range", metavar="SHORTEST:LONGEST", help="search only these periods, in years"
+    )
+    parser.add_argument(
+        "--passage-near", metavar="EPOCH", help="give T as the passage nearest to this epoch"
+    )
+
+
+def add_orbit(parser: argparse.ArgumentParser) -> None:
+    """Which orbit a verb works with."""
+    parser.add_argument(
+        "--orbit", metavar="NAME", help="the orbit on record of this name (default: the last)"
+    )
+    parser.add_argument(
+        "--fresh", action="store_true", help="solve anew even where an orbit is on record"
+    )
+    add_fit(parser)
+
+
+def read(options: argparse.Namespace) -> Pair:
+    from relorbit.measures.store import read_pair
+
+    return read_pair(options.pair, allow_any_epoch=options.any_epoch)
+
+
+def solve(pair: Pair, options: argparse.Namespace) -> Any:
+    """A fresh solution by the options of `add_fit`."""
+    from relorbit.derive.epochs import epoch_from_text
+    from relorbit.solve.solver import solve
+
+    near = options.passage_near
+    return solve(
+        pair,
+        assignments(options.hold, "--hold"),
+        epoch_range=_range(options.epoch_range, "--epoch-range"),
+        period_range=_range(options.period_range, "--period-range"),
+        passage_near=None if near is None else epoch_from_text(near),
+    )
+
+
+def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:
+    """The orbit on record, or a fresh solution where there is none or it is asked for."""
+    changed = options.hold or options.epoch_range or options.period_range
+    if options.orbit is not None:
+        return pair.orbit(options.orbit)
+    if options.fresh or changed or not pair.orbits:
+        return solve(pair, options)
+    return pair.orbit()
+
+
+def assignments(texts: Sequence[str], option: str) -> dict[str, float]:
+    """``["P=41.6,e=0", "a=1"]`` as a dict.
+
+    Raises InputError naming the option and the word that is wrong.
+    """
+    values: dict[str, float] = {}
+    for text in [part for whole in texts for part in whole.split(",")]:
+        name, equals, value = (word.strip() for word in text.partition("="))
+        if not equals:
+            raise InputError(f"{option}: {text!r} is not ELEMENT=VALUE, such as e=0.3")
+        if name in values:
+            raise InputError(f"{option}: {name} is given twice")
+        try:
+            values[name] = float(value)
+        except ValueError:
+            raise InputError(f"{option}: {value!r} is not a number for {name}") from None
+    return values
+
+
+def elements(text: str) -> Elements:
+    """Elements from ``P=..,T=..,e=..,a=..,i=..,node=..,omega=..``."""
+    from relorbit.orbit.elements import NAMES, Elements
+
+    values = assignments([text], "--elements")
+    missing = [name for name in NAMES if name not in values]
+    unknown = [name for name in values if name not in NAMES]
+    if unknown:
+        raise InputError(f"--elements: {unknown[0]} is not an element; use {', '.join(NAMES)}")
+    if missing:
+        raise InputError(f"--elements: {', '.join(missing)} missing; give all of {', '.join(NAMES)}")
+    try:
+        return Elements(**values)
+    except ValueError as error:
+        raise InputError(f"--elements: {error}") from None
+
+
+def _range(text: str | None, option: str) -> tuple[float, float] | None:
+    if text is None:
+        return None
+    first, colon, last = text.partition(":")
+    try:
+        if not colon:
+            raise ValueError
+        low, high = float(first), float(last)
+    except ValueError:
+        raise InputError(f"{option}: {text!r} is not a range; write two numbers as 1950:2020") from None
+    if not low < high:
+        raise InputError(f"{option}: {text!r} is empty; write the smaller number first")
+    return low, high
+
+
+def print_json(content: Any) -> None:
+    json.dump(content, sys.stdout, indent=2, allow_nan=False)
+    sys.stdout.write("\n")
+
+
+def today() -> float:
+    """Now, as a Julian year to the day: the command line is where the clock is looked at."""
+    from datetime import UTC, datetime
+
+    from relorbit.derive.epochs import epoch_from_text
+
+    return epoch_from_text(datetime.now(UTC).date().isoformat())
+
+
+@contextmanager
+def waiting(what: str) -> Iterator[None]:
+    """Show on a terminal how long a step has taken, once it takes over a second."""
+    if not sys.stderr.isatty():
+        yield
+        return
+    done = threading.Event()
+    ticker = threading.Thread(target=_tick, args=(what, done), daemon=True)
+    ticker.start()
+    try:
+        yield
+    finally:
+        done.set()
+        ticker.join()
+
+
+def _tick(what: str, done: threading.Event) -> None:
+    seconds = 0
+    while not done.wait(1.0):
+        seconds += 1
+        print(f"\r{what} ... {seconds} s", end="", file=sys.stderr, flush=True)
+    if seconds:
+        print("\r\033[K", end="", file=sys.stderr, flush=True)

@@ -1,0 +1,55 @@
+"""Draw a pair: the apparent orbit with the measures and their residuals, theta and rho against
+time, the residuals, or a sheet with all of it fit to print. PNG, PDF or SVG by the file's name.
+"""
+
+from __future__ import annotations
+
+import argparse
+from typing import TYPE_CHECKING, Any
+
+from relorbit.cli import common
+
+if TYPE_CHECKING:
+    from relorbit.measures.pair import Pair
+
+EXAMPLE = """  relorbit draw pair.ecsv --out orbit.png
+  relorbit draw pair.ecsv --figure sheet --out sheet.pdf
+  relorbit draw pair.ecsv --orientation eyepiece --years 20 --out finder.svg
+"""
+FIGURES = ("orbit", "time", "residuals", "sheet")
+
+
+def configure(parser: argparse.ArgumentParser) -> None:
+    common.add_pair(parser)
+    parser.add_argument("--out", metavar="FILE", required=True, help="PNG, PDF or SVG file to write")
+    parser.add_argument(
+        "--figure", choices=FIGURES, default="orbit", help="which figure (default: orbit)"
+    )
+    parser.add_argument(
+        "--orientation",
+        choices=("sky", "eyepiece"),
+        default="sky",
+        help="north up and east left as on the sky (default), or as in an inverting eyepiece",
+    )
+    parser.add_argument(
+        "--years", type=int, default=0, metavar="N", help="mark the places of the next N years"
+    )
+    parser.add_argument(
+        "--compare", action="store_true", help="also draw the other orbits on record, thin"
+    )
+    common.add_orbit(parser)
+
+
+def run(options: argparse.Namespace) -> None:
+    from relorbit.show.files import check_format, save_figure
+
+    check_format(options.out)
+    pair = common.read(options)
+    with common.waiting("drawing"):
+        figure = _figure(options, pair)
+        save_figure(figure, options.out)
+    print(f"drawn: {options.out}")
+
+
+def _figure(options: argparse.Namespace, pair: Pair) -> Any:
+    raise NotImplementedError
