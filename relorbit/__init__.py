@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING, Any
 __version__ = "0.1.0"
 
 if TYPE_CHECKING:
+    from relorbit.batch import solve_many
     from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
     from relorbit.errors import InputError, RelorbitError, Undetermined
     from relorbit.measures.pair import Pair, RecordedOrbit
@@ -41,7 +42,23 @@ _HOMES = {
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
 }
-__all__ = sorted([*_HOMES, "__version__"])
+__all__ = [
+    "Elements",
+    "Ephemeris",
+    "InputError",
+    "Measures",
+    "Pair",
+    "RecordedOrbit",
+    "RelorbitError",
+    "Solution",
+    "Undetermined",
+    "__version__",
+    "ephemeris",
+    "read",
+    "solve",
+    "solve_many",
+    "turning_points",
+]
 
 
 def __getattr__(name: str) -> Any:
@@ -55,4 +72,4 @@ def __getattr__(name: str) -> Any:
 
 
 def __dir__() -> list[str]:
-    return __all__
+    return list(__all__)

@@ -40,9 +40,7 @@ class Campaign:
     states_errors: bool = True
 
 
-def campaign(
-    elements: Elements, plan: Campaign, rng: np.random.Generator
-) -> dict[str, np.ndarray]:
+def campaign(elements: Elements, plan: Campaign, rng: np.random.Generator) -> dict[str, np.ndarray]:
     """Columns of one campaign, rounded as such measures are printed."""
     n = plan.count
     epoch = np.sort(rng.uniform(plan.first, plan.last, n)).round(3)
@@ -182,7 +180,7 @@ def _or_empty(value: float, digits: int) -> str:
 
 
 SLATE = Elements(27.6, 2009.4, 0.28, 0.94, 141.0, 33.0, 305.0)
-SLATE_LAYOUT = '''\
+SLATE_LAYOUT = """\
 # How slate_19_mail.txt is set out: an invented list in fixed columns, for relorbit intake.
 form = "fixed"
 skip = 7
@@ -230,7 +228,7 @@ AB = "N. Abruzel"
 
 [constants]
 equinox = "date"
-'''
+"""
 
 
 def slate_19_mail() -> str:

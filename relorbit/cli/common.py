@@ -96,6 +96,14 @@ def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:
     return pair.orbit()
 
 
+def as_solution(pair: Pair, orbit: AnyOrbit) -> Any:
+    """A Solution: the orbit itself, or what an orbit on record says of the measures."""
+    from relorbit.measures.pair import RecordedOrbit
+    from relorbit.solve.solver import recorded_solution
+
+    return recorded_solution(pair, orbit) if isinstance(orbit, RecordedOrbit) else orbit
+
+
 def assignments(texts: Sequence[str], option: str) -> dict[str, float]:
     """``["P=41.6,e=0", "a=1"]`` as a dict.
 
@@ -125,7 +133,9 @@ def elements(text: str) -> Elements:
     if unknown:
         raise InputError(f"--elements: {unknown[0]} is not an element; use {', '.join(NAMES)}")
     if missing:
-        raise InputError(f"--elements: {', '.join(missing)} missing; give all of {', '.join(NAMES)}")
+        raise InputError(
+            f"--elements: {', '.join(missing)} missing; give all of {', '.join(NAMES)}"
+        )
     try:
         return Elements(**values)
     except ValueError as error:
@@ -141,7 +151,9 @@ def _range(text: str | None, option: str) -> tuple[float, float] | None:
             raise ValueError
         low, high = float(first), float(last)
     except ValueError:
-        raise InputError(f"{option}: {text!r} is not a range; write two numbers as 1950:2020") from None
+        raise InputError(
+            f"{option}: {text!r} is not a range; write two numbers as 1950:2020"
+        ) from None
     if not low < high:
         raise InputError(f"{option}: {text!r} is empty; write the smaller number first")
     return low, high

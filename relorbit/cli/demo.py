@@ -47,7 +47,11 @@ def run(options: argparse.Namespace) -> None:
         ("weigh", [str(pair)], "mass.txt"),
         ("draw", [str(pair), "--out", str(folder / "orbit.png"), "--years", "10"], None),
         ("draw", [str(pair), "--figure", "time", "--out", str(folder / "time.png")], None),
-        ("draw", [str(pair), "--figure", "residuals", "--out", str(folder / "residuals.png")], None),
+        (
+            "draw",
+            [str(pair), "--figure", "residuals", "--out", str(folder / "residuals.png")],
+            None,
+        ),
         ("draw", [str(pair), "--figure", "sheet", "--out", str(folder / "sheet.pdf")], None),
     ]
     print("The pair Tarn 31 is invented: made-up elements, generated measures.\n")

@@ -17,11 +17,14 @@ EXAMPLE = """  relorbit draw pair.ecsv --out orbit.png
   relorbit draw pair.ecsv --orientation eyepiece --years 20 --out finder.svg
 """
 FIGURES = ("orbit", "time", "residuals", "sheet")
+SHEET_YEARS = 10
 
 
 def configure(parser: argparse.ArgumentParser) -> None:
     common.add_pair(parser)
-    parser.add_argument("--out", metavar="FILE", required=True, help="PNG, PDF or SVG file to write")
+    parser.add_argument(
+        "--out", metavar="FILE", required=True, help="PNG, PDF or SVG file to write"
+    )
     parser.add_argument(
         "--figure", choices=FIGURES, default="orbit", help="which figure (default: orbit)"
     )
@@ -52,4 +55,36 @@ def run(options: argparse.Namespace) -> None:
 
 
 def _figure(options: argparse.Namespace, pair: Pair) -> Any:
-    raise NotImplementedError
+    from relorbit.derive.ephemeris import elements_and_uncertainty, ephemeris, turning_points
+    from relorbit.derive.epochs import coming_years
+    from relorbit.show.orbit_plot import apparent_orbit
+    from relorbit.show.residual_plot import residuals_over_time
+    from relorbit.show.sheet import sheet
+    from relorbit.show.time_plot import over_time
+    from relorbit.solve.residuals import residuals
+
+    orbit = common.orbit(pair, options)
+    elements = elements_and_uncertainty(orbit)[0]
+    future = None
+    if options.years > 0:
+        future = ephemeris(orbit, coming_years(common.today(), options.years))
+    if options.figure == "sheet":
+        solution = common.as_solution(pair, orbit)
+        coming = ephemeris(orbit, coming_years(common.today(), options.years or SHEET_YEARS))
+        points = turning_points(orbit, common.today())
+        return sheet(solution, pair, coming, points, orientation=options.orientation)
+    if options.figure == "residuals":
+        return residuals_over_time(residuals(elements, pair.measures), title=pair.name)
+    if options.figure == "time":
+        return over_time(elements, pair.measures, ephemeris=future, title=pair.name)
+    others = {}
+    if options.compare:
+        others = {one.name: one.elements for one in pair.orbits if one is not orbit}
+    return apparent_orbit(
+        elements,
+        pair.measures,
+        orientation=options.orientation,
+        title=pair.name,
+        others=others,
+        future=future,
+    )

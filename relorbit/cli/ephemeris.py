@@ -29,11 +29,13 @@ def configure(parser: argparse.ArgumentParser) -> None:
         metavar="P=..,T=..,..",
         help="the seven elements, without a file: P, T in years, a in arcsec, angles in degrees",
     )
-    parser.add_argument("--from", dest="first", metavar="EPOCH", help="first epoch (default: today)")
-    parser.add_argument("--to", dest="last", metavar="EPOCH", help="last epoch (default: 10 steps on)")
     parser.add_argument(
-        "--step", default="1 year", help="such as 1y, 6mo or 30d (default: 1 year)"
+        "--from", dest="first", metavar="EPOCH", help="first epoch (default: today)"
     )
+    parser.add_argument(
+        "--to", dest="last", metavar="EPOCH", help="last epoch (default: 10 steps on)"
+    )
+    parser.add_argument("--step", default="1 year", help="such as 1y, 6mo or 30d (default: 1 year)")
     parser.add_argument(
         "--at", metavar="EPOCH,EPOCH,...", help="these epochs instead: years or dates"
     )

@@ -44,7 +44,10 @@ def configure(parser: argparse.ArgumentParser) -> None:
     for option, field, what in IDENTITY:
         parser.add_argument(option, dest=field, help=what)
     parser.add_argument(
-        "--designation", action="append", default=[], help="another name; may be given several times"
+        "--designation",
+        action="append",
+        default=[],
+        help="another name; may be given several times",
     )
     parser.add_argument(
         "--equinox",

@@ -85,7 +85,9 @@ def elements_and_uncertainty(orbit: AnyOrbit) -> tuple[Elements, Uncertainty | N
         if orbit.covariance is None or orbit.reference_epoch is None:
             return orbit.elements, None
         return orbit.elements, Uncertainty(orbit.reference_epoch, np.asarray(orbit.covariance))
-    raise TypeError(f"an orbit is Elements, a RecordedOrbit or a Solution, not {type(orbit).__name__}")
+    raise TypeError(
+        f"an orbit is Elements, a RecordedOrbit or a Solution, not {type(orbit).__name__}"
+    )
 
 
 def julian_years(epochs: Any) -> FloatArray:

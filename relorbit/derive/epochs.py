@@ -79,3 +79,8 @@ def chosen_epochs(
     years = step_in_years(step)
     end = begin + DEFAULT_STEPS * years if last is None else epoch_from_text(last)
     return epoch_grid(begin, end, years)
+
+
+def coming_years(today: float, count: int) -> FloatArray:
+    """The beginnings of the next `count` years after `today`, Julian years."""
+    return np.floor(today) + 1.0 + np.arange(count)

@@ -85,9 +85,7 @@ def _complex_partials(
     sine, cosine, eta = np.sin(E), np.cos(E), np.sqrt((1.0 - e) * (1.0 + e))
     slope = (1.0 - e) + 2.0 * e * np.sin(0.5 * E) ** 2
     by_mean = _project(constants, -sine / slope, eta * cosine / slope)
-    by_e = _project(
-        constants, -1.0 - sine**2 / slope, sine * (eta * cosine / slope - e / eta)
-    )
+    by_e = _project(constants, -1.0 - sine**2 / slope, sine * (eta * cosine / slope - e / eta))
     dz = np.empty((7, epochs.size), dtype=complex)
     dz[0] = by_mean * (-TWO_PI * turns / P)
     dz[1] = by_e

@@ -51,10 +51,8 @@ def regular_from_elements(elements: Elements, reference_epoch: float) -> FloatAr
     eccentric = elements.e * np.exp(-1j * mean)
     alpha, beta = projection(elements)
     alpha, beta = alpha * np.exp(1j * mean), beta * np.exp(-1j * mean)
-    return np.array(
-        [np.log(elements.P), eccentric.real, eccentric.imag]
-        + [alpha.real, alpha.imag, beta.real, beta.imag]
-    )
+    inner = np.log(elements.P), eccentric.real, eccentric.imag
+    return np.array([*inner, alpha.real, alpha.imag, beta.real, beta.imag])
 
 
 def elements_from_regular(u: ArrayLike, reference_epoch: float) -> Elements:
@@ -227,9 +225,7 @@ def axis_and_period_gradient(u: FloatArray) -> FloatArray:
     return gradient
 
 
-def campbell_covariance(
-    elements: Elements, uncertainty: Uncertainty
-) -> FloatArray:
+def campbell_covariance(elements: Elements, uncertainty: Uncertainty) -> FloatArray:
     """Covariance of the Campbell elements in the order of `NAMES`, shape (7, 7)."""
     u = regular_from_elements(elements, uncertainty.reference_epoch)
     jacobian = campbell_jacobian(u, uncertainty.reference_epoch)

@@ -24,7 +24,7 @@ SUFFIXES = tuple(_METADATA)
 _SETTINGS = {"svg.hashsalt": "relorbit", "pdf.fonttype": 42, "path.simplify": True}
 
 
-def check_suffix(path: str | PathLike[str]) -> str:
+def check_format(path: str | PathLike[str]) -> str:
     """The suffix of `path` in small letters; InputError where no figure can be written so."""
     suffix = Path(path).suffix.lower()
     if suffix not in _METADATA:
@@ -51,7 +51,7 @@ def save_figure(figure: Figure, path: str | PathLike[str]) -> None:
     InputError
         For another suffix, or when the file cannot be written; nothing is then changed.
     """
-    write_text_atomically(path, figure_bytes(figure, check_suffix(path)))
+    write_text_atomically(path, figure_bytes(figure, check_format(path)))
 
 
 def figure_bytes(figure: Figure, suffix: str) -> bytes:

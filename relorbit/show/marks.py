@@ -16,7 +16,17 @@ from numpy.typing import ArrayLike
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
-from relorbit.show.colours import GREY, HAIRLINE, INK, MARKS, SMALL, TEXT, TITLE, hairline, mark_size
+from relorbit.show.colours import (
+    GREY,
+    HAIRLINE,
+    INK,
+    MARKS,
+    SMALL,
+    TEXT,
+    TITLE,
+    hairline,
+    mark_size,
+)
 from relorbit.solve.residuals import Residuals, residuals
 
 LEGEND_ROW = 0.19  # inches
@@ -150,16 +160,17 @@ def legend_below(figure: Figure, handles: Sequence[Artist], bottom: float = 0.06
 
 
 def say_how_many_beyond(axes: Axes, count: int) -> None:
-    """A small note that so many measures lie outside the scale; nothing where none does."""
+    """A small note beside the axes that so many measures lie outside the scale, if any does."""
     if count:
-        axes.text(0.995, 0.03, f"{count} beyond the scale", transform=axes.transAxes,
-                  ha="right", va="bottom", fontsize=SMALL - 1, color=GREY)  # fmt: skip
+        axes.annotate(f"{count} beyond the scale", (1.0, 1.0), xycoords="axes fraction",
+                      xytext=(2.0, 0.0), textcoords="offset points", rotation=90, ha="left",
+                      va="top", fontsize=SMALL - 1.5, color=GREY)  # fmt: skip
 
 
 def put_title(figure: Figure, title: str, note: str = "") -> None:
     """Title at the top left, a short note at the top right."""
-    height = figure.get_size_inches()[1]
+    top = 1.0 - 0.1 / figure.get_size_inches()[1]
     if title:
-        figure.text(0.5, 1.0 - 0.1 / height, title, ha="center", va="top", fontsize=TITLE, color=INK)
+        figure.text(0.5, top, title, ha="center", va="top", fontsize=TITLE, color=INK)
     if note:
-        figure.text(0.98, 1.0 - 0.1 / height, note, ha="right", va="top", fontsize=SMALL, color=GREY)
+        figure.text(0.98, top, note, ha="right", va="top", fontsize=SMALL, color=GREY)

@@ -19,8 +19,8 @@ from numpy.typing import NDArray
 
 from relorbit.derive.ephemeris import Ephemeris
 from relorbit.measures.table import Measures
-from relorbit.orbit.elements import Elements, projection
-from relorbit.orbit.kepler import TWO_PI, FloatArray, eccentric_from_true, unit_ellipse
+from relorbit.orbit.elements import Elements
+from relorbit.orbit.kepler import TWO_PI, FloatArray, eccentric_from_true
 from relorbit.show.colours import (
     CURVE,
     CURVE_WIDTH,
@@ -29,8 +29,6 @@ from relorbit.show.colours import (
     HAIRLINE,
     INK,
     MARKS,
-    OTHER_COLOURS,
-    OTHER_DASHES,
     SMALL,
     THIN,
     hairline,
@@ -45,20 +43,21 @@ from relorbit.show.marks import (
     put_title,
     quiet,
 )
+from relorbit.show.overlays import CURVE_POINTS, draw_future, draw_other_orbit, other_style
 from relorbit.show.view import (
+    FLATTEST,
     View,
     draw_corners,
     frame_axes,
     label_beside,
-    points_per_arcsec,
+    place,
+    sky,
     view_of,
 )
 from relorbit.solve.residuals import Residuals
 
 WIDTH = 6.6  # inches
-CURVE_POINTS = 721
 DASH = 0.035  # half the length of a dash for a lone angle or separation, of the view's width
-LABEL_GAP = 26.0  # points from one year to the next
 
 
 def apparent_orbit(
@@ -98,7 +97,7 @@ def apparent_orbit(
     """
     of = compared(elements, measures, residuals)
     others = dict(others or {})
-    view = view_of(_everything(elements, of, others, future), orientation)
+    view = orbit_view(elements, of, others, future, orientation=orientation)
     handles = orbit_handles(elements, of, others, future)
     below = legend_height(handles, WIDTH) + 0.44
     left, right, top = 0.68, 0.15, 0.42 if title or orientation == "eyepiece" else 0.15
@@ -133,7 +132,7 @@ def draw_apparent_orbit(
     `orientation` counts where no view is given. The axes are set to equal scales.
     """
     if view is None:
-        view = view_of(_everything(elements, residuals, {}, None), orientation)
+        view = orbit_view(elements, residuals, orientation=orientation)
     quiet(axes)
     frame_axes(axes, view)
     draw_primary(axes)
@@ -150,19 +149,29 @@ def draw_apparent_orbit(
     return view
 
 
-def sky(theta: FloatArray, rho: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """x to the east and y to the north (arcsec) of theta (degrees) and rho."""
-    angle = np.radians(theta)
-    return rho * np.sin(angle), rho * np.cos(angle)
+def orbit_view(
+    elements: Elements,
+    of: Residuals,
+    others: Mapping[str, Elements] | None = None,
+    future: Ephemeris | None = None,
+    *,
+    orientation: str = "sky",
+    flattest: float = FLATTEST,
+) -> View:
+    """A view of all orbits, places to come and measures.
 
-
-def place(elements: Elements, anomaly: FloatArray | float) -> tuple[FloatArray, FloatArray]:
-    """x to the east and y to the north (arcsec) at eccentric anomalies (radians)."""
-    alpha, beta = projection(elements)
-    X, Y = unit_ellipse(anomaly, elements.e)
-    w = X + 1j * Y
-    z = alpha * w + beta * np.conj(w)
-    return z.imag, z.real
+    Measures not used that lie far away are left out. `flattest` is the least height over width.
+    """
+    ring = np.linspace(0.0, TWO_PI, 181)
+    needed = [place(one, ring) for one in (elements, *(others or {}).values())]
+    needed.append((np.zeros(1), np.zeros(1)))
+    if future is not None:
+        needed.append(sky(future.theta, future.rho))
+    measured = _measured(of)
+    seen = [np.stack(part, axis=-1) for part in needed]
+    return view_of(
+        np.concatenate([*seen, measured[of.used]]), measured[~of.used], orientation, flattest
+    )
 
 
 def draw_primary(axes: Axes) -> Line2D:
@@ -177,14 +186,6 @@ def draw_curve(axes: Axes, elements: Elements) -> Line2D:
     x, y = place(elements, np.linspace(0.0, TWO_PI, CURVE_POINTS))
     (line,) = axes.plot(x, y, color=CURVE, linewidth=CURVE_WIDTH, zorder=2)
     line.set_gid("orbit")
-    return line
-
-
-def draw_other_orbit(axes: Axes, elements: Elements, label: str, slot: int = 0) -> Line2D:
-    """Another orbit as a thin line; `slot` chooses colour and dashes."""
-    x, y = place(elements, np.linspace(0.0, TWO_PI, CURVE_POINTS))
-    (line,) = axes.plot(x, y, zorder=1.8, **_other_style(slot), label=label)
-    line.set_gid("other orbit")
     return line
 
 
@@ -296,25 +297,6 @@ def draw_direction(axes: Axes, elements: Elements, of: Residuals, view: View) ->
     return arrow
 
 
-def draw_future(
-    axes: Axes, future: Ephemeris, view: View, avoid: NDArray | None = None
-) -> Line2D:
-    """Places to come as dots, with the year where there is room for it.
-
-    Labels keep away from the points `avoid`, shape (n, 2), east and north in arcsec.
-    """
-    x, y = sky(future.theta, future.rho)
-    (dots,) = axes.plot(x, y, marker="o", markersize=3.2, color=FUTURE, markeredgecolor="white",
-                        markeredgewidth=0.3, linestyle="none", zorder=4.2)  # fmt: skip
-    dots.set_gid("future")
-    last = None
-    for epoch, spot in zip(future.epoch, np.stack([x, y], axis=-1), strict=True):
-        if last is None or np.hypot(*(spot - last)) * points_per_arcsec(axes, view) > LABEL_GAP:
-            last, text = spot, f"{epoch:.1f}".removesuffix(".0")
-            label_beside(axes, view, text, spot, 15.0, avoid, fontsize=SMALL - 1, color=FUTURE)
-    return dots
-
-
 def orbit_handles(
     elements: Elements,
     of: Residuals,
@@ -339,7 +321,7 @@ def orbit_handles(
         handles.append(Line2D([], [], marker="o", markersize=6, markerfacecolor="none",
                               markeredgecolor=INK, linestyle="none", label="node"))  # fmt: skip
     for slot, label in enumerate(others or {}):
-        handles.append(Line2D([], [], label=label, **_other_style(slot)))
+        handles.append(Line2D([], [], label=label, **other_style(slot)))
     if future is not None:
         handles.append(Line2D([], [], marker="o", markersize=3.2, color=FUTURE,
                               linestyle="none", label="predicted"))  # fmt: skip
@@ -355,20 +337,6 @@ def _as_if_whole(of: Residuals) -> tuple[FloatArray, FloatArray]:
 def _measured(of: Residuals) -> NDArray:
     """Where the measures stand on the picture, shape (n, 2)."""
     return np.stack(sky(*_as_if_whole(of)), axis=-1)
-
-
-def _everything(
-    elements: Elements, of: Residuals, others: Mapping[str, Elements], future: Ephemeris | None
-) -> tuple[NDArray, NDArray]:
-    """Points that must be seen, and points that are left out where they lie far away."""
-    ring = np.linspace(0.0, TWO_PI, 181)
-    needed = [place(one, ring) for one in (elements, *others.values())]
-    needed.append((np.zeros(1), np.zeros(1)))
-    if future is not None:
-        needed.append(sky(future.theta, future.rho))
-    measured = _measured(of)
-    seen = [np.stack(part, axis=-1) for part in needed]
-    return np.concatenate([*seen, measured[of.used]]), measured[~of.used]
 
 
 def _direction(elements: Elements, anomaly: float) -> NDArray:
@@ -391,14 +359,10 @@ def _free_anomaly(elements: Elements, of: Residuals) -> float:
     return float(anomalies[np.argmax(np.hypot(gaps[..., 0], gaps[..., 1]).min(axis=1))])
 
 
-def _other_style(slot: int) -> dict:
-    return {"color": OTHER_COLOURS[slot % len(OTHER_COLOURS)], "linewidth": THIN,
-            "linestyle": OTHER_DASHES[slot % len(OTHER_DASHES)]}  # fmt: skip
-
-
 def _say_what_is_outside(axes: Axes, of: Residuals, inside: NDArray[np.bool_]) -> None:
     count = int(np.count_nonzero(~inside))
     if count:
         words = "1 measure not used lies" if count == 1 else f"{count} measures not used lie"
-        axes.text(0.5, 0.012, f"{words} outside the picture", transform=axes.transAxes,
-                  ha="center", va="bottom", fontsize=SMALL - 1, color=GREY)  # fmt: skip
+        axes.annotate(f"{words} outside the picture", (1.0, 0.0), xycoords="axes fraction",
+                      xytext=(0.0, -24.0), textcoords="offset points", ha="right", va="center",
+                      fontsize=SMALL - 1, color=GREY)  # fmt: skip

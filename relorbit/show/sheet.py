@@ -14,7 +14,7 @@ from relorbit.measures.pair import Pair
 from relorbit.show.colours import GREY, HAIRLINE, INK, SMALL
 from relorbit.show.marks import legend_below
 from relorbit.show.numbers import error_text, known, on_the_point, significant, with_error
-from relorbit.show.orbit_plot import draw_apparent_orbit, orbit_handles
+from relorbit.show.orbit_plot import draw_apparent_orbit, orbit_handles, orbit_view
 from relorbit.show.residual_plot import draw_residual_panels, residual_unit
 from relorbit.show.text import element_rows, ephemeris_rows, mass_figures, turning_rows
 from relorbit.solve.solution import Solution
@@ -22,6 +22,7 @@ from relorbit.solve.solution import Solution
 PAGE = (8.27, 11.69)  # A4 portrait, inches
 MARGIN = 0.6
 LINE = 0.155  # inches from one line of a table to the next
+FLATTEST = 0.95  # height over width of the apparent orbit: flatter ones leave a hole in the page
 EPHEMERIS_ROWS = 11
 COLUMN = 4.62  # inches from the left edge to the right-hand half of the lower part
 NOTE_WIDTH = 58  # characters of a line of notes
@@ -61,7 +62,10 @@ def sheet(
     _put_heading(figure, solution, pair)
     axes = figure.add_axes(_box(MARGIN + 0.5, 6.42, 3.95, 3.88))
     axes.set_anchor("N")
-    draw_apparent_orbit(axes, solution.elements, solution.residuals, orientation=orientation)
+    view = orbit_view(
+        solution.elements, solution.residuals, orientation=orientation, flattest=FLATTEST
+    )
+    draw_apparent_orbit(axes, solution.elements, solution.residuals, view=view)
     _put_elements(figure, solution)
     _draw_residuals(figure, solution)
     legend_below(figure, orbit_handles(solution.elements, solution.residuals), bottom=3.0)
@@ -174,7 +178,7 @@ def _position(ra_deg: float, dec_deg: float) -> str:
 
 def _put_elements(figure: Figure, solution: Solution) -> None:
     """Elements, quality of the fit and mass, beside the apparent orbit."""
-    left, right = 5.3, PAGE[0] - MARGIN
+    left = 5.3
     scaled = solution.error_scale > 1.0
     formal = solution.sigma_formal
     rows = []
@@ -187,7 +191,7 @@ def _put_elements(figure: Figure, solution: Solution) -> None:
                      second])  # fmt: skip
     heads = ["element", "value", "", "scaled \u03c3" if scaled else "\u03c3",
              "formal" if scaled else ""]  # fmt: skip
-    edges = [left, left + 1.05, left + 1.1, right - (0.55 if scaled else 0.0), right]
+    edges = [left, left + 1.05, left + 1.12, left + 1.82, PAGE[0] - MARGIN]
     y = _put_table(figure, 10.2, edges, "l.l..", heads, rows) - 0.06
     lines = _fit_lines(solution)
     for line in lines:
@@ -200,8 +204,8 @@ def _fit_lines(solution: Solution) -> list[str]:
     epochs = of.epoch[of.used]
     lines = [f"{solution.used} of {solution.measures} measures used"]
     if epochs.size:
-        lines.append(f"{epochs.min():.1f} to {epochs.max():.1f}, "
-                     f"{significant(np.ptp(epochs) / solution.elements.P, 2)} revolutions")  # fmt: skip
+        turns = significant(np.ptp(epochs) / solution.elements.P, 2)
+        lines.append(f"{epochs.min():.1f} to {epochs.max():.1f}, {turns} revolutions")
     lines.append(f"chi2 {solution.chi2:.1f}, {solution.dof} degrees of freedom")
     if solution.error_scale > 1.0:
         lines.append(f"scaled \u03c3 = formal \u00d7 {significant(solution.error_scale, 3)}")
@@ -209,7 +213,8 @@ def _fit_lines(solution: Solution) -> list[str]:
     if solution.mass_total is None:
         return [*lines, "total mass not known: no parallax"]
     mass = solution.mass_total
-    lines.append(f"total mass {mass_figures(mass).replace('+/-', '±')} suns")
+    figures = mass_figures(mass).replace("+/-", "\u00b1")
+    lines.append(f"total mass {figures} solar masses")
     parts = [("a\u00b3/P\u00b2", mass.sigma_orbit), ("parallax", mass.sigma_parallax)]
     for name, part in parts:
         lines.append(f"  error from {name}: {error_text(part) if known(part) else 'unknown'}")
@@ -221,7 +226,7 @@ def _put_ephemeris(figure: Figure, ephemeris: Ephemeris) -> None:
     rows = ephemeris_rows(ephemeris)
     y = 2.68
     x = MARGIN
-    edges = [x, x + 0.62, x + 0.75, x + 1.95, x + 2.45, x + 3.05, x + 3.55]
+    edges = [x, x + 0.62, x + 0.75, x + 1.92, x + 2.42, x + 3.08, x + 3.68]
     heads = ["", "epoch", "date (TT)", "\u03b8 (\u00b0)", "\u03c3", "\u03c1 (\u2033)", "\u03c3"]
     y = _put_table(figure, y, edges, "lrl....", heads,
                    [["", *row] for row in rows[:EPHEMERIS_ROWS]])  # fmt: skip
@@ -236,18 +241,16 @@ def _put_turning_points_and_notes(
     y = 2.68
     if points:
         x = COLUMN
-        edges = [x, x + 1.25, x + 1.37, x + 2.58, x + 3.05]
+        edges = [x, x + 1.25, x + 1.37, x + 2.5, x + 3.05]
         rows = [
             [point.kind, row[1], row[3], row[4], row[5]]
             for point, row in zip(points, turning_rows(points), strict=True)
         ]
         heads = ["next", "epoch", "date", "\u03b8 (\u00b0)", "\u03c1 (\u2033)"]
         y = _put_table(figure, y, edges, "l.l..", heads, rows) - 0.1
-    lines = [
-        line
-        for text in [*(one.text for one in solution.warnings), *notes]
-        for line in textwrap.wrap(text, NOTE_WIDTH, initial_indent="\u2022 ", subsequent_indent="   ")
-    ]
+    indents = {"initial_indent": "\u2022 ", "subsequent_indent": "   "}
+    texts = [*(one.text for one in solution.warnings), *notes]
+    lines = [line for text in texts for line in textwrap.wrap(text, NOTE_WIDTH, **indents)]
     room = int((y - 0.62) / 0.135)
     if len(lines) > room:
         lines = [*lines[: room - 1], "\u2022 more notes in the text report"]

@@ -27,6 +27,7 @@ from relorbit.show.numbers import (
 
 if TYPE_CHECKING:
     from relorbit.derive.ephemeris import Ephemeris, TurningPoint
+    from relorbit.derive.mass import MassBudget
     from relorbit.orbit.third_law import TotalMass
     from relorbit.solve.residuals import Residuals
     from relorbit.solve.solution import Notice, Solution
@@ -204,32 +205,47 @@ def _pair_of_figures(value: float, sigma: float | None) -> tuple[str, str]:
     return f"({text}", f" +/- {error})e{power}"
 
 
-def mass_budget_table(
-    mass: TotalMass, budget: Sequence[tuple[str, float | None]] | None = None
-) -> str:
-    """Where the error of the mass comes from.
+def mass_budget_text(budget: MassBudget) -> str:
+    """The total mass and where its error comes from."""
+    mass = budget.mass
+    ratio, spread = _pair_of_figures(*budget.axis_cubed_over_period_squared)
+    lines = [
+        f"total mass           {mass_figures(mass)} solar masses",
+        f"a^3/P^2              {ratio}{spread} arcsec^3/yr^2",
+        f"true semimajor axis  {significant(budget.semimajor_axis_au, 4)} au",
+    ]
+    if budget.correlation is not None:
+        lines.append(f"correlation of a, P  {fixed(budget.correlation, 3, sign=True)}")
+    rows = [[one.name, one.sigma, one.share] for one in budget.sources]
+    if not rows:
+        return "\n".join([*lines, "error of the mass unknown: neither orbit nor parallax has one"])
+    if known(mass.sigma):
+        rows.append(["together", mass.sigma, sum(one.share for one in budget.sources)])
+    cells = [
+        [name, _signed_error(sigma), _signed_error(100.0 * sigma / mass.value),
+         fixed(100.0 * share, 0)]
+        for name, sigma, share in rows
+    ]  # fmt: skip
+    heads = ["source of error", "sigma", "of the mass", "of the variance"]
+    units = ["", "solar masses", "%", "%"]
+    parts = ["\n".join(lines), table(heads, cells, "l...", units)]
+    if any(one.sigma < 0.0 for one in budget.sources):
+        parts.append(_wrapped("Below 0: the correlation takes that much away, since errors of a "
+                              "and of P cancel in a^3/P^2."))  # fmt: skip
+    return "\n\n".join(parts)
 
-    Parameters
-    ----------
-    mass : TotalMass
-    budget : sequence of (source, contribution), optional
-        Each contribution a standard deviation in solar masses, None where unknown; by default
-        the orbit and the parallax.
-    """
-    if budget is None:
-        budget = (("orbit, a^3/P^2", mass.sigma_orbit), ("parallax", mass.sigma_parallax))
-    rows = []
-    for source, part in [*budget, ("together", mass.sigma)]:
-        if not known(part):
-            rows.append([source, "unknown", "-", "-"])
-            continue
-        share = 100.0 * (part / mass.sigma) ** 2 if known(mass.sigma) and mass.sigma else None
-        percent = 100.0 * part / mass.value
-        rows.append([source, error_text(part), error_text(percent), fixed(share, 0)])
-    return f"total mass {mass_figures(mass)} solar masses\n\n" + table(
-        ["source of error", "sigma", "of the mass", "of the variance"],
-        rows, "l...", ["", "solar masses", "%", "%"],
-    )  # fmt: skip
+
+def component_text(masses: tuple[float, float], mass_ratio: float) -> str:
+    """The mass of each star, from the total mass and the mass ratio given."""
+    primary, secondary = (significant(mass, 3) for mass in masses)
+    return (
+        f"mass ratio {mass_ratio:g} as given: primary {primary}, secondary {secondary} "
+        "solar masses"
+    )
+
+
+def _signed_error(sigma: float) -> str:
+    return ("-" if sigma < 0.0 else "") + error_text(abs(sigma))
 
 
 def alternatives_table(solution: Solution) -> str:

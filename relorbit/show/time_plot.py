@@ -55,9 +55,12 @@ def over_time(
     title : str
     """
     of = compared(elements, measures, residuals)
-    handles = [*mark_handles(of), Line2D([], [], color=CURVE, linewidth=CURVE_WIDTH, label="orbit")]
+    handles = mark_handles(of)
+    handles.append(Line2D([], [], color=CURVE, linewidth=CURVE_WIDTH, label="orbit"))
     if ephemeris is not None and np.isfinite(ephemeris.rho_sigma).any():
-        handles.append(Line2D([], [], color=FUTURE, linewidth=6, alpha=0.3, label="predicted error"))
+        handles.append(
+            Line2D([], [], color=FUTURE, linewidth=6, alpha=0.3, label="predicted error")
+        )
     upper, lower = 0.42 if title else 0.15, legend_height(handles, WIDTH) + 0.44
     gap = 0.1
     height = upper + 2 * PANEL + gap + lower
@@ -106,9 +109,10 @@ def draw_theta_over_time(
     draw_error_bars(axes, residuals.epoch, observed, residuals.theta_err, residuals)
     draw_marks(axes, residuals.epoch, observed, residuals)
     _finish(axes, first, last, "position angle (\u00b0)")
-    seen = [*curve[np.isfinite(curve)], *observed[np.isfinite(observed)]]
     if not folded:
-        _limits(axes, seen)
+        used = observed[residuals.used]
+        _limits(axes, [*theta, *used[np.isfinite(used)]])
+    _say_beyond(axes, observed)
     _angle_scale(axes)
 
 
@@ -128,8 +132,7 @@ def draw_rho_over_time(
     _finish(axes, first, last, "separation (arcsec)")
     used = residuals.rho[residuals.used]
     _limits(axes, [*rho, *used[np.isfinite(used)]], floor=0.0)
-    low, high = axes.get_ylim()
-    say_how_many_beyond(axes, int(np.sum((residuals.rho < low) | (residuals.rho > high))))
+    _say_beyond(axes, residuals.rho)
 
 
 def time_range(
@@ -211,10 +214,15 @@ def _limits(axes: Axes, seen: list[float], floor: float | None = None) -> None:
     axes.set_ylim(low, high + pad)
 
 
+def _say_beyond(axes: Axes, values: FloatArray) -> None:
+    low, high = axes.get_ylim()
+    say_how_many_beyond(axes, int(np.count_nonzero((values < low) | (values > high))))
+
+
 def _angle_scale(axes: Axes) -> None:
     """Round angles, in [0, 360) also where the curve runs on."""
     low, high = axes.get_ylim()
-    wanted = (high - low) / 9.0
+    wanted = (high - low) / 10.0
     if wanted >= 1.0:
         step = min((s for s in ROUND_ANGLES if s >= wanted), default=360 * np.ceil(wanted / 360))
         axes.yaxis.set_major_locator(MultipleLocator(step))

@@ -14,6 +14,8 @@ from matplotlib.ticker import MultipleLocator
 from matplotlib.transforms import Affine2D, ScaledTranslation, Transform
 from numpy.typing import ArrayLike, NDArray
 
+from relorbit.orbit.elements import Elements, projection
+from relorbit.orbit.kepler import FloatArray, unit_ellipse
 from relorbit.show.colours import INK, SMALL, TEXT
 
 ORIENTATIONS = ("sky", "eyepiece")
@@ -64,14 +66,33 @@ class View:
         return (x > min(self.x)) & (x < max(self.x)) & (y > min(self.y)) & (y < max(self.y))
 
 
-def view_of(points: tuple[NDArray, NDArray], orientation: str = "sky") -> View:
+def sky(theta: FloatArray, rho: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """x to the east and y to the north (arcsec) of theta (degrees) and rho."""
+    angle = np.radians(theta)
+    return rho * np.sin(angle), rho * np.cos(angle)
+
+
+def place(elements: Elements, anomaly: FloatArray | float) -> tuple[FloatArray, FloatArray]:
+    """x to the east and y to the north (arcsec) at eccentric anomalies (radians)."""
+    alpha, beta = projection(elements)
+    X, Y = unit_ellipse(anomaly, elements.e)
+    w = X + 1j * Y
+    z = alpha * w + beta * np.conj(w)
+    return z.imag, z.real
+
+
+def view_of(
+    needed: NDArray, extra: NDArray, orientation: str = "sky", flattest: float = FLATTEST
+) -> View:
     """A view of all that must be seen, wide enough to leave two corners free.
 
     Parameters
     ----------
-    points : two arrays of shape (n, 2) and (m, 2)
+    needed, extra : arrays of shape (n, 2) and (m, 2)
         East and north (arcsec) of what must be seen, and of what may be left out where it is far.
     orientation : "sky" or "eyepiece"
+    flattest : float
+        The least height over width.
 
     Raises
     ------
@@ -80,7 +101,6 @@ def view_of(points: tuple[NDArray, NDArray], orientation: str = "sky") -> View:
     """
     if orientation not in ORIENTATIONS:
         raise ValueError(f"orientation is {' or '.join(ORIENTATIONS)}, not {orientation!r}")
-    needed, extra = points
     low, high = needed.min(axis=0), needed.max(axis=0)
     size = float(max(high - low)) or 1.0
     near = np.all((extra > low - FAR * size) & (extra < high + FAR * size), axis=1)
@@ -90,7 +110,7 @@ def view_of(points: tuple[NDArray, NDArray], orientation: str = "sky") -> View:
     low, high = page.min(axis=0), page.max(axis=0)
     middle, size = 0.5 * (low + high), high - low
     width = max(size[0], size[1] / TALLEST, 1e-12)
-    height = float(np.clip(size[1], FLATTEST * width, TALLEST * width))
+    height = float(np.clip(size[1], flattest * width, TALLEST * width))
     factor = 1.0 + 2.0 * MARGIN
     for _ in range(12):
         span = factor * np.array([width, height])

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -24,6 +26,7 @@ def find_basins(
     observations: Observations,
     held: Holding | None = None,
     period_range: tuple[float, float] | None = None,
+    on_progress: Callable[[float], None] | None = None,
 ) -> tuple[float, Refined]:
     """Every distinct orbit that the measures allow, without a starting guess.
 
@@ -34,6 +37,8 @@ def find_basins(
     held : Holding, optional
     period_range : (float, float), optional
         Julian years; by default what the span and number of the measures allow.
+    on_progress : callable, optional
+        Called with the share done, 0 to 1; what it raises ends the work.
 
     Returns
     -------
@@ -45,23 +50,30 @@ def find_basins(
     held = held or Holding()
     t0 = observations.mean_epoch
     data = sky_data(observations)
-    u = starting_orbits(data, t0, held, period_range)
+    report = on_progress or (lambda share: None)
+    u = starting_orbits(data, t0, held, period_range, lambda share: report(0.5 * share))
     few = _fewer(observations)
-    u = _follow(sky_problem(sky_data(few), t0), u, held)
-    return t0, settle(polar_problem(observations, t0), u, held)
+    u = _follow(sky_problem(sky_data(few), t0), u, held, lambda: report(0.5))
+    return t0, settle(polar_problem(observations, t0), u, held, lambda: report(0.7))
 
 
-def settle(problem: Problem, u: FloatArray, held: Holding) -> Refined:
+def settle(
+    problem: Problem, u: FloatArray, held: Holding, on_step: Callable[[], None] | None = None
+) -> Refined:
     """Distinct minima of the problem, best first, from near starts u, shape (c, 7)."""
-    rough = refine(problem, u, held, most_iterations=LATER_STEPS, tolerance=1e-2)
+    rough = refine(problem, u, held, LATER_STEPS, 1e-2, on_step=on_step)
     keep = _near_the_best(_distinct(rough.u, rough.chi2), rough.chi2)
-    fine = refine(problem, rough.u[keep], held, most_iterations=LAST_STEPS)
+    fine = refine(problem, rough.u[keep], held, LAST_STEPS, on_step=on_step)
     keep = _near_the_best(_distinct(fine.u, fine.chi2), fine.chi2)
     return Refined(fine.u[keep], fine.chi2[keep], rough.iterations + fine.iterations)
 
 
 def starting_orbits(
-    data: SkyData, t0: float, held: Holding, period_range: tuple[float, float] | None
+    data: SkyData,
+    t0: float,
+    held: Holding,
+    period_range: tuple[float, float] | None,
+    on_progress: Callable[[float], None] | None = None,
 ) -> FloatArray:
     """Regular coordinates, shape (c, 7), of the best minima of the map."""
     span = data.epoch[-1] - data.epoch[0]
@@ -71,15 +83,13 @@ def starting_orbits(
         periods = np.array([held.values["P"]])
     if "e" in held.values:
         eccentricities = (held.values["e"],)
-    P, e, T = search(data, periods, eccentricities).basins(STARTS)
+    P, e, T = search(data, periods, eccentricities, on_progress).basins(STARTS)
     if "T" in held.values:
         T = np.full_like(T, held.values["T"])
     return orbits_at(data, t0, P, e, T)
 
 
-def orbits_at(
-    data: SkyData, t0: float, P: FloatArray, e: FloatArray, T: FloatArray
-) -> FloatArray:
+def orbits_at(data: SkyData, t0: float, P: FloatArray, e: FloatArray, T: FloatArray) -> FloatArray:
     """Regular coordinates, shape (m, 7), of the orbits with the best constants at m (P, e, T)."""
     constants = fit_constants(data, P, e, T).constants
     alpha, beta = projection_from_constants(*constants.T)
@@ -89,12 +99,14 @@ def orbits_at(
     return np.stack(columns, axis=-1)
 
 
-def _follow(problem: Problem, u: FloatArray, held: Holding) -> FloatArray:
+def _follow(
+    problem: Problem, u: FloatArray, held: Holding, on_step: Callable[[], None]
+) -> FloatArray:
     """Bring starts down, letting go of those that meet another or lead nowhere."""
-    first = refine(problem, u, held, most_iterations=FIRST_STEPS, tolerance=1e-2)
+    first = refine(problem, u, held, FIRST_STEPS, 1e-2, on_step=on_step)
     keep = _distinct(first.u, first.chi2)
     keep = keep[_hopeful(first.chi2[keep], ALWAYS_FOLLOWED[0])]
-    later = refine(problem, first.u[keep], held, most_iterations=LATER_STEPS, tolerance=1e-2)
+    later = refine(problem, first.u[keep], held, LATER_STEPS, 1e-2, on_step=on_step)
     keep = _distinct(later.u, later.chi2)
     return later.u[keep[_hopeful(later.chi2[keep], ALWAYS_FOLLOWED[1])]]
 

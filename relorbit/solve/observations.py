@@ -117,18 +117,14 @@ def complete_errors(measures: Measures) -> tuple[FloatArray, FloatArray, NDArray
     return np.where(has_theta, theta_err, np.nan), np.where(has_rho, rho_err, np.nan), assumed
 
 
-def _drawn_through(
-    epoch: FloatArray, rho: FloatArray, known: NDArray[np.bool_]
-) -> FloatArray:
+def _drawn_through(epoch: FloatArray, rho: FloatArray, known: NDArray[np.bool_]) -> FloatArray:
     """Separations with the gaps filled through time; 1 arcsec where none is known."""
     if not known.any():
         return np.ones(epoch.size)
     return np.where(known, rho, np.interp(epoch, epoch[known], rho[known]))
 
 
-def observe(
-    measures: Measures, epoch_range: tuple[float, float] | None = None
-) -> Observations:
+def observe(measures: Measures, epoch_range: tuple[float, float] | None = None) -> Observations:
     """The rows to fit, with errors for all.
 
     Parameters

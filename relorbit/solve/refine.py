@@ -29,7 +29,7 @@ from relorbit.solve.observations import Observations
 
 HIGHEST_E = 0.99999
 LARGEST_STEP = 1.5  # in ln P, of one iteration
-# residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits u, shape (c, 7)
+# residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits (c, 7)
 WithJacobian = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
 
 
@@ -111,7 +111,9 @@ class Holding:
         held = set(self.values)
         circular, face_on = self.values.get("e") == 0.0, self.values.get("i") in (0.0, 180.0)
         # a circle has no periastron and a face-on orbit no node: one unknown less each
-        return SIZE - len(held | ({"omega"} if circular else set()) | ({"node"} if face_on else set()))
+        return SIZE - len(
+            held | ({"omega"} if circular else set()) | ({"node"} if face_on else set())
+        )
 
     def put_back(self, u: FloatArray, reference_epoch: float) -> FloatArray:
         """u, shape (c, 7), with the held elements at their values."""
@@ -126,7 +128,10 @@ class Holding:
     def on(self, elements: Elements) -> Elements:
         """`elements` with the held ones at their values."""
         changed = dict(self.values)
-        if "node" in changed and abs((elements.node - changed["node"] + 90.0) % 360.0 - 90.0) > 90.0:
+        if (
+            "node" in changed
+            and abs((elements.node - changed["node"] + 90.0) % 360.0 - 90.0) > 90.0
+        ):
             # the fit names a node in [0, 180): the held one may be the other
             changed.setdefault("omega", elements.omega + 180.0)
         if changed.get("e") == 0.0 and "omega" not in changed:
@@ -174,6 +179,7 @@ def refine(
     most_iterations: int = 60,
     tolerance: float = 1e-9,
     columns: slice = slice(None),
+    on_step: Callable[[], None] | None = None,
 ) -> Refined:
     """Bring c orbits to the nearest minimum of chi2.
 
@@ -189,6 +195,8 @@ def refine(
         An orbit is at rest when a step is expected to lower chi2 by less than this.
     columns : slice
         Coordinates that may change; ``slice(1, 7)`` holds the period for many orbits at once.
+    on_step : callable, optional
+        Called at each iteration; what it raises ends the refinement.
     """
     held = held or Holding()
     t0 = problem.reference_epoch
@@ -199,6 +207,8 @@ def refine(
     iteration = 0
     while active.size and iteration < most_iterations:
         iteration += 1
+        if on_step is not None:
+            on_step()
         basis = held.directions(u[active], t0)
         full, expected = _damped_step(
             normal[active], right[active], damping[active], basis, columns
@@ -219,9 +229,7 @@ def refine(
     return Refined(u, chi2, iteration)
 
 
-def _normal_equations(
-    problem: Problem, u: FloatArray
-) -> tuple[FloatArray, FloatArray, FloatArray]:
+def _normal_equations(problem: Problem, u: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """chi2, shape (c,), J J', shape (c, 7, 7), and J r, shape (c, 7)."""
     r, J = problem.with_jacobian(u)
     return (

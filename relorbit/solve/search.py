@@ -8,6 +8,7 @@ over all T, at a cost that does not depend on the number of measures.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -95,7 +96,10 @@ def period_grid(
 
 
 def search(
-    data: SkyData, periods: FloatArray, eccentricities: tuple[float, ...] = ECCENTRICITIES
+    data: SkyData,
+    periods: FloatArray,
+    eccentricities: tuple[float, ...] = ECCENTRICITIES,
+    on_progress: Callable[[float], None] | None = None,
 ) -> SearchMap:
     """chi2 of the best orbit at every period and eccentricity of a grid.
 
@@ -107,6 +111,8 @@ def search(
         Julian years.
     eccentricities : tuple of float, length k
         Each 0 <= e < 1.
+    on_progress : callable, optional
+        Called with the share done, 0 to 1; what it raises ends the search.
     """
     reference = 0.5 * (data.epoch[0] + data.epoch[-1])
     span = max(data.epoch[-1] - data.epoch[0], np.finfo(float).tiny)
@@ -114,6 +120,8 @@ def search(
     gain = np.empty((periods.size, len(eccentricities)))
     phase = np.empty_like(gain)
     for start in range(0, periods.size, BLOCK):
+        if on_progress is not None:
+            on_progress(start / periods.size)
         rows = slice(start, start + BLOCK)
         # short arcs leave the normal equations too close to singular for single precision
         kind = np.float64 if periods[rows].max() > ALWAYS_DOUBLE * span else np.float32
@@ -197,7 +205,11 @@ def _gain(spectra: NDArray, kernels: NDArray) -> NDArray:
     scale -= a12 * a12
     scale += np.finfo(a11.dtype).tiny
     np.reciprocal(scale, out=scale)
-    i11, i12, i22 = a22 * scale, a12 * scale, a11 * scale  # the inverse of A, i12 with its sign lost
+    i11, i12, i22 = (
+        a22 * scale,
+        a12 * scale,
+        a11 * scale,
+    )  # the inverse of A, i12 with its sign lost
     k11, k12 = i11 * b11, i11 * b12  # K = A^-1 B
     k11 -= i12 * b12
     k12 -= i12 * b22

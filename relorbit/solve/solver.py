@@ -2,17 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from typing import Any
 
 import numpy as np
 
 from relorbit.errors import InputError, Undetermined
-from relorbit.measures.pair import Pair
+from relorbit.measures.pair import Pair, RecordedOrbit
 from relorbit.orbit.elements import Elements
-from relorbit.orbit.regular import SIZE, Uncertainty, elements_from_regular
-from relorbit.orbit.third_law import total_mass
-from relorbit.solve.basins import find_basins
+from relorbit.orbit.regular import (
+    SIZE,
+    Uncertainty,
+    elements_from_regular,
+    regular_from_elements,
+)
+from relorbit.orbit.third_law import TotalMass, total_mass
+from relorbit.solve.basins import LAST_STEPS, find_basins
 from relorbit.solve.limits import (
     ONE_SIGMA,
     TWO_SIGMA,
@@ -23,7 +28,7 @@ from relorbit.solve.limits import (
     straight_motion,
 )
 from relorbit.solve.observations import Observations, observe
-from relorbit.solve.refine import Holding, Refined, covariance, polar_problem
+from relorbit.solve.refine import Holding, Refined, covariance, polar_problem, refine
 from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Alternative, Notice, Solution
 from relorbit.solve.warnings import gather
@@ -41,6 +46,7 @@ def solve(
     epoch_range: tuple[float, float] | None = None,
     period_range: tuple[float, float] | None = None,
     passage_near: float | None = None,
+    on_progress: Callable[[float], None] | None = None,
 ) -> Solution:
     """Find the orbit of a pair.
 
@@ -57,6 +63,9 @@ def solve(
         divided by the number of epochs (not below a fortieth of the span) to 100 time spans.
     passage_near : float, optional
         Julian year; T is the passage nearest to it instead of the weighted mean epoch.
+    on_progress : callable, optional
+        Called with the share done, 0 to 1, in the calling thread; an exception that it raises
+        ends the work and is passed on, which is how to cancel.
 
     Returns
     -------
@@ -73,22 +82,93 @@ def solve(
     held = _holding(hold)
     observations = observe(pair.measures, epoch_range)
     _enough(observations, held)
-    t0, orbits = find_basins(observations, held, _period_range(period_range))
-    dof = observations.numbers - held.free
-    scale = max(1.0, float(orbits.chi2[0]) / dof)
+    t0, orbits = find_basins(observations, held, _period_range(period_range), on_progress)
     open_period = None
     if not held.values:
+        scale = max(1.0, float(orbits.chi2[0]) / (observations.numbers - held.free))
         open_period = _determined(observations, orbits, scale, t0)
+    found = [open_period] if open_period else []
+    return _solution(pair, observations, held, t0, orbits, passage_near, found)
+
+
+def refine_from(
+    pair: Pair,
+    elements: Elements,
+    hold: Mapping[str, Any] | None = None,
+    *,
+    epoch_range: tuple[float, float] | None = None,
+) -> Solution:
+    """The orbit at the minimum of chi2 nearest to given elements: no search, no other orbits.
+
+    Parameters and errors as those of `solve`; whether the measures determine the orbit is not
+    asked, the errors then say it.
+    """
+    held = _holding(hold)
+    observations = observe(pair.measures, epoch_range)
+    _enough(observations, held)
+    t0 = observations.mean_epoch
+    problem = polar_problem(observations, t0)
+    orbits = refine(problem, regular_from_elements(elements, t0), held, LAST_STEPS)
+    return _solution(pair, observations, held, t0, orbits, elements.T, [])
+
+
+def recorded_solution(pair: Pair, record: RecordedOrbit) -> Solution:
+    """What an orbit on record says of the measures that the pair has now.
+
+    chi2 and residuals are those of the present measures in use; the errors are those recorded,
+    all None where the record has none.
+    """
+    observations = observe(pair.measures)
+    known = record.covariance is not None and record.reference_epoch is not None
+    uncertainty = Uncertainty(
+        record.reference_epoch if known else observations.mean_epoch,
+        np.asarray(record.covariance) if known else np.full((SIZE, SIZE), np.nan),
+    )
+    used = np.zeros(len(pair.measures), dtype=bool)
+    used[observations.rows] = True
+    found = residuals(record.elements, pair.measures, used)
+    return Solution(
+        pair=pair.name,
+        elements=record.elements,
+        uncertainty=uncertainty,
+        chi2=found.chi2,
+        dof=max(1, observations.numbers - SIZE),
+        error_scale=1.0,
+        held={},
+        measures=len(pair.measures),
+        used=len(observations),
+        residuals=found,
+        mass_total=_mass(pair, record.elements, uncertainty if known else None),
+        span=observations.span,
+        parallax_mas=pair.parallax_mas,
+        parallax_err_mas=pair.parallax_err_mas,
+    )
+
+
+def _mass(pair: Pair, elements: Elements, uncertainty: Uncertainty | None) -> TotalMass | None:
+    if pair.parallax_mas is None or not pair.parallax_mas > 0.0:
+        return None
+    return total_mass(elements, pair.parallax_mas, pair.parallax_err_mas, uncertainty)
+
+
+def _solution(
+    pair: Pair,
+    observations: Observations,
+    held: Holding,
+    t0: float,
+    orbits: Refined,
+    passage_near: float | None,
+    found: list[Notice],
+) -> Solution:
+    """The best of some refined orbits with all that a solution says of it."""
+    dof = observations.numbers - held.free
+    scale = max(1.0, float(orbits.chi2[0]) / dof)
     u = orbits.u[0]
     matrix = scale * covariance(polar_problem(observations, t0), u, held)
     elements = _elements(u, t0, held, passage_near)
     used = np.zeros(len(pair.measures), dtype=bool)
     used[observations.rows] = True
     uncertainty = Uncertainty(t0, matrix)
-    parallax = pair.parallax_mas
-    mass = None
-    if parallax is not None and parallax > 0.0:
-        mass = total_mass(elements, parallax, pair.parallax_err_mas, uncertainty)
     solution = Solution(
         pair=pair.name,
         elements=elements,
@@ -101,12 +181,12 @@ def solve(
         used=len(observations),
         residuals=residuals(elements, pair.measures, used),
         alternatives=tuple(_alternatives(orbits, t0, held, passage_near)),
-        mass_total=mass,
+        mass_total=_mass(pair, elements, uncertainty),
         span=observations.span,
-        parallax_mas=parallax,
+        parallax_mas=pair.parallax_mas,
         parallax_err_mas=pair.parallax_err_mas,
     )
-    return gather(solution, pair, observations, [open_period] if open_period else [])
+    return gather(solution, pair, observations, found)
 
 
 def _holding(hold: Mapping[str, Any] | None) -> Holding:

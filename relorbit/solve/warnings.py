@@ -71,7 +71,9 @@ def _without_meaning(s: Solution) -> Iterator[Notice]:
             "the place of the companion in its orbit is not",
         )
     if s.elements.i in (0.0, 180.0):
-        yield Notice("face-on", "a face-on orbit has no node: node is 0 and omega is counted from it")
+        yield Notice(
+            "face-on", "a face-on orbit has no node: node is 0 and omega is counted from it"
+        )
     elif (
         sigma["node"] is not None
         and sigma["node"] > VAGUE_NODE

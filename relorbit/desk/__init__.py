@@ -1,0 +1,1 @@
+"""The window: widgets that show a model and send it intentions, no arithmetic."""
