@@ -15,7 +15,7 @@ from typing import NoReturn
 from relorbit import __version__
 from relorbit.errors import InputError, Undetermined
 
-# verb -> what it does; the module of the same name in this package has `configure` and `run`
+# verb -> what it does; its module, of the same name in this package, has `configure` and `run`
 VERBS = {
     "intake": "read lists of measures into a pair file",
     "solve": "find the orbit of a pair, with its errors and the total mass",
@@ -24,7 +24,10 @@ VERBS = {
     "weigh": "the total mass and what its error is made of",
     "draw": "figures: the apparent orbit, the motion in time, the residuals, a sheet to print",
     "demo": "do the whole job on a shipped example",
+    "desk": "a window to work on a pair by eye and hand",
 }
+# verbs whose module is in a room above this one
+ELSEWHERE = {"desk": "relorbit.desk.verb"}
 FAULT, BAD_INPUT, NOT_DETERMINED, INTERRUPTED = 1, 2, 3, 130
 _OPTION, _NEGATIVE = re.compile(r"--[a-z][a-z-]*"), re.compile(r"-[.0-9]")
 CAUTION = (
@@ -73,7 +76,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return BAD_INPUT
     try:
         verb = verbs.parse_args(words[:1]).verb
-        module = import_module(f"relorbit.cli.{verb}")
+        module = import_module(ELSEWHERE.get(verb, f"relorbit.cli.{verb}"))
         parser = OneLineParser(
             prog=f"relorbit {verb}",
             formatter_class=argparse.RawDescriptionHelpFormatter,

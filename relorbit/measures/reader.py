@@ -13,7 +13,15 @@ from relorbit.measures import cells, dates, ecsv
 from relorbit.measures.cells import Grid
 from relorbit.measures.headers import Heading, understand
 from relorbit.measures.layout import Layout, LayoutColumn
-from relorbit.measures.table import FLAGS, NUMBERS, TECHNIQUES, TEXTS, Measures
+from relorbit.measures.table import (
+    EQUINOX,
+    FLAGS,
+    NUMBERS,
+    TECHNIQUES,
+    TEXTS,
+    Measures,
+    not_an_equinox,
+)
 
 _TECHNIQUE_WORDS = {
     **{technique: technique for technique in TECHNIQUES},
@@ -253,7 +261,10 @@ class ListReader:
         """Put what holds for the whole list where a row does not say."""
         for name, value in self.defaults.items():
             if value is not None:
-                value = _equinox(value) if name == "equinox" else value
+                if name == "equinox":
+                    value = _equinox(value)
+                    if not EQUINOX.fullmatch(value):
+                        raise InputError(not_an_equinox(value))
                 if name == "technique":
                     value = self.technique(value, 0, lambda _, what: InputError(what))
                 given = columns.get(name, [None] * count)

@@ -26,7 +26,7 @@ TEXTS = {
     "epoch_obs": "",
 }  # fmt: skip
 
-_EQUINOX = re.compile(r"date|[BJ]?[0-9]{4}(\.[0-9]*)?")
+EQUINOX = re.compile(r"date|[BJ]?[0-9]{4}(\.[0-9]*)?")
 _CONTROL = re.compile(r"[\x00-\x1f\x7f-\x9f]")
 _TRUE = {True, "true", "yes", "y", "1", "1.0"}
 _FALSE = {False, "false", "no", "n", "0", "0.0"}
@@ -324,15 +324,20 @@ def _check(c: Mapping[str, NDArray], place: _Place, allow_any_epoch: bool) -> No
              "{} is before 1600 or after 2200; correct it, or allow any epoch".format))  # fmt: skip
     rule(~np.isin(c["technique"], TECHNIQUES), "technique",
          lambda v: f"{v!r} is not a technique; use one of {', '.join(TECHNIQUES)}")  # fmt: skip
-    good = {word: bool(_EQUINOX.fullmatch(word)) for word in set(c["equinox"].tolist())}
+    good = {word: bool(EQUINOX.fullmatch(word)) for word in set(c["equinox"].tolist())}
     bad = np.array([not good[word] for word in c["equinox"].tolist()], dtype=bool)
     rule(
         bad,
         "equinox",
-        lambda v: f"{v!r} is not an equinox; use J2000, date, or a year such as 1950.0",
+        not_an_equinox,
     )
     if found:
         raise place.error(*min(found, key=lambda one: one[0]))
+
+
+def not_an_equinox(word: str) -> str:
+    """What is said of a word that names no equinox."""
+    return f"{word!r} is not an equinox; use J2000, date, or a year such as 1950.0"
 
 
 def _rules_of_presence(c: Mapping[str, NDArray], rule: Callable) -> None:

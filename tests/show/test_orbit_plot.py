@@ -166,7 +166,7 @@ def test_nothing_is_cut_and_the_legend_lies_outside(elements):
     legend = figure.legends[0].get_window_extent(renderer)
     assert not legend.overlaps(axes.get_tightbbox(renderer))
     box, (width, height) = figure.get_tightbbox(renderer), figure.get_size_inches()
-    assert 0.0 <= box.x0 and box.x1 <= width and 0.0 <= box.y0 and box.y1 <= height
+    assert box.x0 >= 0.0 and box.x1 <= width and box.y0 >= 0.0 and box.y1 <= height
     pixels = axes.transData.transform(sky(m.theta, m.rho))
     assert all(axes.bbox.contains(*spot) for spot in pixels)
 

@@ -96,9 +96,8 @@ def test_a_period_and_its_double_are_both_reported_where_nothing_tells_them_apar
     periods = [one.P for one, chi2 in zip(found, close, strict=True) if chi2 < close[0] + 9.0]
     assert any(abs(P - 10.0) < 0.05 for P in periods)
     assert any(abs(P - 5.0) < 0.05 for P in periods)
-    assert "rival-orbits" in [notice.code for notice in solution.warnings]
     text = next(notice.text for notice in solution.warnings if notice.code == "rival-orbits")
-    assert "5.0" in text or "4.99" in text or "10" in text or "9.99" in text
+    assert f"{solution.alternatives[0].elements.P:.4g}" in text
 
 
 def test_one_measure_in_between_tells_the_period_from_its_double() -> None:
