@@ -157,7 +157,7 @@ def pair_text(pair: Pair) -> str:
         values = getattr(pair.measures, name)
         if name not in _ALWAYS and not _holds_anything(name, values):
             continue
-        # astropy writes the header; the rows, plain CSV, are written below thirty times as fast
+        # astropy writes the header; the rows are plain CSV, and quick to write here
         table[name] = MaskedColumn(values[:0], name=name, unit=unit, description=description)
         cells = values.tolist()
         columns.append(["" if v != v else v for v in cells] if name in NUMBERS else cells)

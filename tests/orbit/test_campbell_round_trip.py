@@ -99,19 +99,18 @@ def test_closer_to_face_on_than_constants_can_tell(i):
     same_path(orbit, back, 1e-12)
 
 
-@pytest.mark.parametrize("omega", np.linspace(0.0, 350.0, 36))
 @pytest.mark.parametrize("node", [0.0, 1e-14, 90.0, 179.99999999999997, 180.0, 359.99999999999994])
 @pytest.mark.parametrize("i", [35.0, 90.0, 145.7])
-def test_a_node_in_the_north_keeps_its_side(node, omega, i):
+def test_a_node_in_the_north_keeps_its_side(node, i):
     """A node a rounding error west of north must not turn omega, and the pair, by 180 degrees."""
-    orbit = Elements(10.0, 2000.0, 0.3, 1.0, i, node, omega)
-    same_path(orbit, there_and_back(orbit))
+    for omega in range(0, 360, 5):
+        orbit = Elements(10.0, 2000.0, 0.3, 1.0, i, node, omega)
+        same_path(orbit, there_and_back(orbit))
 
 
-def test_a_node_an_ulp_before_zero():
-    # alpha at 1 - 1e-16 rad, beta at -1: the node is -5e-17 rad, which is 0 or just below 180
+def test_a_node_far_below_an_ulp_before_zero():
     _, _, node, omega = geometry_from_projection(0.8, 0.3 * np.exp(-1e-17j))
-    assert (node, omega) in ((0.0, 0.0), (180.0, 180.0))
+    assert 0.0 <= node < 180.0
     assert apart(float(node) + float(omega), 0.0) < ANGLE
 
 
