@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import Any
 
 from relorbit.derive.consequences import Consequences, consequences
+from relorbit.derive.ephemeris import AnyOrbit
 from relorbit.errors import InputError
 from relorbit.measures import editing
 from relorbit.measures.pair import Pair, RecordedOrbit, new_pair
@@ -98,6 +99,19 @@ class DeskModel:
     def unsaved(self) -> bool:
         """Whether the pair differs from the file; the orbit being tried is not part of it."""
         return self.pair is not self._saved_pair
+
+    @property
+    def nudging(self) -> bool:
+        """Whether the present orbit comes from a nudge, of which more may follow at once."""
+        return (self.undo_label or "").startswith("nudge")
+
+    @property
+    def orbit(self) -> AnyOrbit | None:
+        """The current orbit with all that is known of it: a fit, or one on record, or elements."""
+        if self.state.solution is not None or self.elements is None:
+            return self.state.solution
+        recorded = (one for one in reversed(self.pair.orbits) if one.elements == self.elements)
+        return next(recorded, self.elements)
 
     @property
     def undo_label(self) -> str | None:

@@ -10,7 +10,6 @@ from matplotlib.axes import Axes
 from matplotlib.lines import Line2D
 from matplotlib.markers import CARETDOWN, CARETUP
 from matplotlib.ticker import MaxNLocator
-from numpy.typing import NDArray
 
 from relorbit.derive.glance import phase
 from relorbit.desk.marks import group_line
@@ -212,7 +211,3 @@ class StripsView(PlotView):
             axes.set_ylim(y)
         self.feed()
         self.redraw(rebuild=False)
-
-    def panel_at(self, spot: NDArray) -> Axes:
-        """The panel that a pixel (from below) is in."""
-        return self.across if spot[1] > self.across.bbox.y0 else self.along

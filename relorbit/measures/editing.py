@@ -12,6 +12,7 @@ from dataclasses import fields, replace
 import numpy as np
 
 from relorbit.errors import InputError
+from relorbit.measures import cells
 from relorbit.measures.dates import julian_years
 from relorbit.measures.pair import Pair
 from relorbit.measures.table import FLAGS, NUMBERS, Measures
@@ -58,7 +59,11 @@ def with_cell(pair: Pair, row: int, column: str, text: str) -> Pair:
     columns = _columns(pair.measures.select([row]))
     _keep_as_received(columns, column, text)
     columns[column] = [_value(column, text)]
-    changed = Measures.from_columns(columns)
+    try:
+        # an epoch that was allowed when the list was read does not forbid an edit elsewhere
+        changed = Measures.from_columns(columns, allow_any_epoch=column != "epoch")
+    except InputError as error:
+        raise InputError(error.what, row=row + 1, column=error.column) from None
     return _with_rows(pair, [row], changed)
 
 
@@ -84,7 +89,11 @@ def with_measure(pair: Pair, epoch: str, theta: str, rho: str, **others: str) ->
     """
     given = {"epoch": epoch, "theta": theta, "rho": rho, **others}
     columns = {name: [_value(name, text.strip())] for name, text in given.items()}
-    return pair.with_measures(pair.measures.append(Measures.from_columns(columns)))
+    try:
+        measure = Measures.from_columns(columns)
+    except InputError as error:
+        raise InputError(error.what, column=error.column) from None
+    return pair.with_measures(pair.measures.append(measure))
 
 
 def without(pair: Pair, rows: Iterable[int]) -> Pair:
@@ -108,24 +117,31 @@ def _keep_as_received(columns: dict[str, list], column: str, text: str) -> None:
 def _value(column: str, text: str) -> float | str | None:
     if not text:
         return None
+
+    def fail(_: int, what: str) -> InputError:
+        return InputError(what, column=column)
+
     if column == "epoch":
-        return float(
-            julian_years([text], "auto", lambda _, what: InputError(what, column="epoch"))[0]
-        )
-    if column in NUMBERS:
-        try:
-            return float(text.replace(",", "."))
-        except ValueError:
-            raise InputError(f"{text!r} is not a number", column=column) from None
-    return text
+        return float(julian_years([text], "auto", fail)[0])
+    return float(cells.numbers([text], fail)[0]) if column in NUMBERS else text
 
 
 def _with_rows(pair: Pair, rows: list[int], part: Measures) -> Pair:
-    """The pair with the rows `rows` replaced by those of `part`."""
+    """The pair with the rows `rows` replaced by those of `part`; the same one if all are equal.
+
+    Columns that do not change are shared with the old measures: a long history of edits of many
+    measures would otherwise fill the memory.
+    """
     columns = {}
     for field in fields(Measures):
         old, new = getattr(pair.measures, field.name), getattr(part, field.name)
+        if np.array_equal(old[rows], new, equal_nan=field.name in NUMBERS):
+            columns[field.name] = old
+            continue
         column = np.array(old, dtype=np.result_type(old, new))
         column[rows] = new
+        column.setflags(write=False)
         columns[field.name] = column
+    if all(column is getattr(pair.measures, name) for name, column in columns.items()):
+        return pair
     return pair.with_measures(Measures(**columns))

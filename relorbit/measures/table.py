@@ -94,7 +94,9 @@ class Measures:
         size = np.shape(self.epoch)
         for field in fields(self):
             kind = float if field.name in NUMBERS else bool if field.name in FLAGS else str
-            array = np.array(getattr(self, field.name), dtype=kind)
+            array = getattr(self, field.name)
+            if not _is_settled(array, kind):
+                array = np.array(array, dtype=kind)
             if array.ndim != 1 or array.shape != size:
                 raise ValueError(
                     f"column {field.name} has shape {array.shape}, epoch has {size}: "
@@ -197,6 +199,17 @@ class Measures:
 
     def _arrays(self) -> Iterator[NDArray]:
         return (getattr(self, field.name) for field in fields(self))
+
+
+def _is_settled(values: object, kind: type) -> bool:
+    """True for a column of other measures, which nobody can change: it need not be copied."""
+    return (
+        isinstance(values, np.ndarray)
+        and values.base is None
+        and not values.flags.writeable
+        and values.dtype.kind == np.dtype(kind).kind
+        and (kind is str or values.dtype == kind)
+    )
 
 
 @dataclass(frozen=True)

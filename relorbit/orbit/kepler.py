@@ -17,6 +17,9 @@ TWO_PI_MIDDLE = 3.9683743166540886e-09
 TWO_PI_LOW = 2.068073192717642e-18
 BLOCK = 16384  # elements a block: the working arrays stay in the processor's cache
 SERIES_BELOW = 0.3  # 1 - e cos E under which E - sin E is summed as a series
+# one e has a table of M over E, fine enough for its interpolated E to need one Halley step only
+TABLE_E = np.linspace(0.0, np.pi, 1025)
+TABLE_SINE = np.sin(TABLE_E)
 # the constants of Markley's alpha, eq. 20
 ALPHA_FIXED = 3.0 * np.pi**2 / (np.pi**2 - 6.0)
 ALPHA_SLOPE = 1.6 * np.pi / (np.pi**2 - 6.0)
@@ -46,7 +49,8 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
     Notes
     -----
     Starting value: the cubic of Markley F. L., 1995, Celestial Mechanics 63, 101, eqs. 5 and
-    15-20, improved once, both in single precision. Then one Halley step in double precision on
+    15-20, improved once, both in single precision; or, for few M at one e, interpolation in a
+    table. Then one Halley step in double precision on
     (1 - e) E + e (E - sin E) - M, a form that does not cancel near periastron. Small E at
     e > 0.5 take a path of their own, where E - sin E is a series. The number of operations is
     fixed, and every one runs over a whole block.
@@ -60,11 +64,12 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
     small = np.empty(mean.size, dtype=bool)
     size = min(BLOCK, mean.size)
     double, single = np.empty((5, size)), np.empty((10, size), dtype=np.float32)
+    table = _table(float(ecc[0])) if mean.size <= BLOCK and np.ndim(e) == 0 and mean.size else None
     for start in range(0, mean.size, BLOCK):
         part = slice(start, start + BLOCK)
         width = min(BLOCK, mean.size - start)
         rooms = double[:, :width], single[:, :width]
-        _solve_block(mean[part], ecc[part], result[part], small[part], *rooms)
+        _solve_block(mean[part], ecc[part], result[part], small[part], *rooms, table)
     which = np.flatnonzero(small)
     if which.size:
         full = mean[which]
@@ -72,6 +77,11 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
         inner = np.copysign(_near_periastron(np.abs(reduced), ecc[which]), reduced)
         result[which] = inner + (full - reduced)
     return result.reshape(shape)
+
+
+def _table(e: float) -> FloatArray:
+    """M at every E of `TABLE_E`, from which starting values for one e are interpolated."""
+    return TABLE_E - e * TABLE_SINE
 
 
 def _reduced(mean: FloatArray) -> FloatArray:
@@ -93,6 +103,7 @@ def _solve_block(
     small: NDArray[np.bool_],
     double: FloatArray,
     single: NDArray[np.float32],
+    table: FloatArray | None,
 ) -> None:
     """Fill `anomaly`, and mark in `small` what `_near_periastron` has to do instead.
 
@@ -108,7 +119,10 @@ def _solve_block(
     reduced = mean if largest <= np.pi else _reduced(mean)
     np.abs(reduced, out=m)
     np.subtract(1.0, e, out=gap)
-    anomaly[...] = _starter(m, e, gap, single)
+    if table is None:
+        anomaly[...] = _starter(m, e, gap, single)
+    else:
+        anomaly[...] = np.interp(m, table, TABLE_E)
     # tan(E/2) gives both sin E and the slope 1 - e cos E = (1 - e) + 2 e sin^2(E/2)
     np.multiply(anomaly, 0.5, out=sine)
     np.tan(sine, out=sine)

@@ -104,25 +104,34 @@ def unit_orbit(
     g = np.asarray(k) + 1j * np.asarray(h)
     e = np.abs(g)
     varpi = np.angle(g)
-    mean = longitude - varpi
-    mean = mean - TWO_PI * np.rint(mean / TWO_PI)
-    E = eccentric_anomaly(mean, e)
+    # a single e is solved for faster than an array of one
+    E = eccentric_anomaly(longitude - varpi, e.item() if e.size == 1 else e)
     U = np.exp(1j * (E + varpi))
     eta = np.sqrt((1.0 - e) * (1.0 + e))
     b = 1.0 / (1.0 + eta)
-    first, second = (0.5 * (1.0 + eta)) * U, (0.5 * b) * g * g * np.conj(U)
-    w = first + second - g
+    turn = (b * g) * np.conj(U)
+    first, second = (0.5 * (1.0 + eta)) * U, (0.5 * g) * turn
+    w = first + second
+    w -= g
     if not derivatives:
         return (w,)
-    half = np.sin(0.5 * E)
-    by_F = 1j * (first - second)
-    by_longitude = by_F / ((1.0 - e) + 2.0 * e * half * half)
+    # 1 - e cos E; it only scales derivatives, so that cancellation near e = 1 does not matter
+    slope = 1.0 - (np.conj(g) * U).real
+    by_longitude = first - second
+    by_longitude *= 1j / slope
     # d eta = -(k dk + h dh)/eta and d b = b^2 (k dk + h dh)/eta
-    shape = (b * b * g * g * np.conj(U) - U) * (0.5 / eta)
-    turn = b * g * np.conj(U)
-    by_k = shape * g.real + turn - 1.0 + U.imag * by_longitude
-    by_h = shape * g.imag + 1j * (turn - 1.0) - U.real * by_longitude
-    return w, by_longitude, by_k, by_h
+    shape = (b * g) * turn
+    shape -= U
+    shape *= 0.5 / eta
+    turn -= 1.0
+    by_k = shape * g.real
+    by_k += turn
+    by_k += U.imag * by_longitude
+    shape *= g.imag
+    turn *= 1j
+    shape += turn
+    shape -= U.real * by_longitude
+    return w, by_longitude, by_k, shape
 
 
 def position_and_jacobian(
@@ -144,36 +153,40 @@ def position_and_jacobian(
     z : complex ndarray, shape (..., n), arcsec
     jacobian : complex ndarray, shape (..., 7, n)
     """
-    u = np.asarray(u, dtype=float)
-    columns = u[..., None]
-    longitude = TWO_PI * (epochs - reference_epoch) * np.exp(-columns[..., 0, :])
-    w, by_longitude, by_k, by_h = unit_orbit(longitude, columns[..., 1, :], columns[..., 2, :])
-    alpha = columns[..., 3, :] + 1j * columns[..., 4, :]
-    beta = columns[..., 5, :] + 1j * columns[..., 6, :]
+    longitude, k, h, alpha, beta = _parts(u, reference_epoch, epochs)
+    w, by_longitude, by_k, by_h = unit_orbit(longitude, k, h)
     conj_w = np.conj(w)
     jacobian = np.empty((*w.shape[:-1], SIZE, w.shape[-1]), dtype=complex)
-    np.multiply(by_longitude, -longitude, out=jacobian[..., 0, :])
-    jacobian[..., 1, :], jacobian[..., 2, :] = by_k, by_h
-    inner = jacobian[..., :3, :]
+    np.multiply(by_longitude, longitude, out=jacobian[..., 0, :])
+    jacobian[..., 1, :], jacobian[..., 2, :], jacobian[..., 3, :] = by_k, by_h, w
+    # the model's z comes out of the same product as its derivatives, in the place of w
+    inner = jacobian[..., :4, :]
     mirrored = np.conj(inner)
     inner *= alpha[..., None]
     mirrored *= beta[..., None]
     inner += mirrored
+    z = inner[..., 3, :].copy()
+    np.negative(inner[..., 0, :], out=inner[..., 0, :])
     jacobian[..., 3, :], jacobian[..., 5, :] = w, conj_w
     np.multiply(jacobian[..., 3::2, :], 1j, out=jacobian[..., 4::2, :])
-    return alpha * w + beta * conj_w, jacobian
+    return z, jacobian
 
 
 def regular_position(
     u: FloatArray, reference_epoch: float, epochs: FloatArray
 ) -> NDArray[np.complex128]:
     """z = x + i y (arcsec), shape (..., n), of orbits u, shape (..., 7)."""
-    columns = np.asarray(u, dtype=float)[..., None]
-    longitude = TWO_PI * (epochs - reference_epoch) * np.exp(-columns[..., 0, :])
-    (w,) = unit_orbit(longitude, columns[..., 1, :], columns[..., 2, :], derivatives=False)
-    alpha = columns[..., 3, :] + 1j * columns[..., 4, :]
-    beta = columns[..., 5, :] + 1j * columns[..., 6, :]
+    longitude, k, h, alpha, beta = _parts(u, reference_epoch, epochs)
+    (w,) = unit_orbit(longitude, k, h, derivatives=False)
     return alpha * w + beta * np.conj(w)
+
+
+def _parts(u: FloatArray, reference_epoch: float, epochs: FloatArray) -> tuple[NDArray, ...]:
+    """Mean longitude, shape (..., n), and k, h, alpha and beta, shape (..., 1), of orbits u."""
+    u = np.asarray(u, dtype=float)
+    longitude = (TWO_PI * np.exp(-u[..., :1])) * (epochs - reference_epoch)
+    alpha, beta = u[..., 3:4] + 1j * u[..., 4:5], u[..., 5:6] + 1j * u[..., 6:7]
+    return longitude, u[..., 1:2], u[..., 2:3], alpha, beta
 
 
 def campbell_jacobian(u: FloatArray, reference_epoch: float) -> FloatArray:

@@ -10,12 +10,23 @@ from relorbit.measures.intake import Intake, Merged
 from relorbit.measures.pair import Pair
 
 MOST_LINES = 12  # lines named one by one before the rest is counted
+CURE = (
+    "give --ra and --dec to bring it to J2000,\n"
+    "or --equinox J2000 where the list is there already"
+)
 
 
 def intake_text(
-    into: str, pair: Pair, reports: Sequence[tuple[str, Intake, Merged]], reduced: int
+    into: str,
+    pair: Pair,
+    reports: Sequence[tuple[str, Intake, Merged]],
+    reduced: int,
+    cure: str = CURE,
 ) -> str:
-    """What was read, skipped and doubled, with line numbers, and what the pair file holds."""
+    """What was read, skipped and doubled, with line numbers, and what the pair file holds.
+
+    `cure` says what to do about position angles that could not be brought to J2000.
+    """
     parts = [_list_text(*report) for report in reports]
     m = pair.measures
     held = f"{into}: {pair.name}, {_count(len(m), 'measure')}"
@@ -27,8 +38,7 @@ def intake_text(
     left = int(np.count_nonzero(m.equinox != "J2000"))
     if left:
         parts.append(
-            f"theta of {_count(left, 'measure')} is left at its own equinox: give --ra and --dec "
-            "to bring it to J2000,\nor --equinox J2000 where the list is there already"
+            f"theta of {_count(left, 'measure')} is left at its own equinox: {cure}"
         )
     return "\n".join(parts)
 

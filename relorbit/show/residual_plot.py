@@ -75,7 +75,7 @@ def _draw(
 ) -> None:
     unit, factor = residual_unit(of)
     value, error = value * factor, error * factor
-    limit = _limit(value, error, of)
+    limit = panel_limit(value, error, of)
     quiet(axes)
     axes.axhline(0.0, color=INK, linewidth=THIN, zorder=1.5)
     far = np.abs(value) > limit
@@ -100,7 +100,7 @@ def residual_unit(of: Residuals) -> tuple[str, float]:
     return ("mas", 1000.0) if sizes.size and sizes.max() < IN_MAS else ("arcsec", 1.0)
 
 
-def _limit(value: FloatArray, error: FloatArray, of: Residuals) -> float:
+def panel_limit(value: FloatArray, error: FloatArray, of: Residuals) -> float:
     """Half the height of a panel: all residuals used, with error bars unless they are huge."""
     shown = (of.used if of.used.any() else np.ones(len(of), dtype=bool)) & np.isfinite(value)
     if not shown.any():

@@ -226,7 +226,7 @@ def _put_ephemeris(figure: Figure, ephemeris: Ephemeris) -> None:
     rows = ephemeris_rows(ephemeris)
     y = 2.68
     x = MARGIN
-    edges = [x, x + 0.62, x + 0.75, x + 1.92, x + 2.42, x + 3.08, x + 3.68]
+    edges = [x, x + 0.6, x + 0.7, x + 1.95, x + 2.46, x + 3.1, x + 3.68]
     heads = ["", "epoch", "date (TT)", "\u03b8 (\u00b0)", "\u03c3", "\u03c1 (\u2033)", "\u03c3"]
     y = _put_table(figure, y, edges, "lrl....", heads,
                    [["", *row] for row in rows[:EPHEMERIS_ROWS]])  # fmt: skip

@@ -28,6 +28,7 @@ from relorbit.solve.linear import SkyData
 from relorbit.solve.observations import Observations
 
 HIGHEST_E = 0.99999
+MOST_DAMPING = 1e10  # an orbit that does not get better with as short a step as that is at rest
 LARGEST_STEP = 1.5  # in ln P, of one iteration
 # residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits (c, 7)
 WithJacobian = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
@@ -213,10 +214,17 @@ def refine(
         full, expected = _damped_step(
             normal[active], right[active], damping[active], basis, columns
         )
+        moving = expected >= tolerance
+        if not moving.all():
+            active, full, expected = active[moving], full[moving], expected[moving]
+            if not active.size:
+                break
         trial = u[active] + full
         inside = np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E
-        inside &= np.all(np.isfinite(trial), axis=1) & (np.abs(full[:, 0]) < LARGEST_STEP)
-        trial = held.put_back(np.where(inside[:, None], trial, u[active]), t0)
+        inside &= np.isfinite(full).all(axis=1) & (np.abs(full[:, 0]) < LARGEST_STEP)
+        if not inside.all():
+            trial = np.where(inside[:, None], trial, u[active])
+        trial = held.put_back(trial, t0)
         chi2_trial, normal_trial, right_trial = _normal_equations(problem, trial)
         fall = chi2[active] - chi2_trial
         better = inside & (fall > 0.0)
@@ -224,8 +232,7 @@ def refine(
         moved = active[better]
         u[moved], chi2[moved] = trial[better], chi2_trial[better]
         normal[moved], right[moved] = normal_trial[better], right_trial[better]
-        at_rest = (expected < tolerance) | (~better & (damping[active] > 1e10))
-        active = active[~at_rest]
+        active = active[better | (damping[active] <= MOST_DAMPING)]
     return Refined(u, chi2, iteration)
 
 

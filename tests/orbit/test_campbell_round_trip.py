@@ -130,12 +130,14 @@ def test_constants_by_the_textbook(orbit):
     so, co, sn, cn, ci = np.sin(omega), np.cos(omega), np.sin(node), np.cos(node), np.cos(i)
     expected = (co * cn - so * sn * ci, co * sn + so * cn * ci,
                 -so * cn - co * sn * ci, -so * sn + co * cn * ci)  # fmt: skip
-    assert (c.A, c.B, c.F, c.G) == pytest.approx([orbit.a * x for x in expected], abs=1e-14 * orbit.a)
+    expected = [orbit.a * value for value in expected]
+    assert pytest.approx(expected, abs=1e-14 * orbit.a) == (c.A, c.B, c.F, c.G)
     assert c.to_dict() == {"A": c.A, "B": c.B, "F": c.F, "G": c.G}
 
 
 def test_arrays_of_projections():
-    many = [Elements(10.0, 2000.0, 0.3, 1.0 + k, i, 20.0, 50.0) for k, i in enumerate((0, 40, 90, 180))]
+    tilts = enumerate((0, 40, 90, 180))
+    many = [Elements(10.0, 2000.0, 0.3, 1.0 + k, i, 20.0, 50.0) for k, i in tilts]
     alpha, beta = np.array([projection(one) for one in many]).T
     a, i, node, omega = geometry_from_projection(alpha.reshape(2, 2), beta.reshape(2, 2))
     assert a.shape == i.shape == node.shape == omega.shape == (2, 2)

@@ -52,7 +52,7 @@ def test_round_trip_is_the_same_path(orbit, t0):
     assert gap.max() < orbit.a * (1e-13 + 4.0 * speed * rounding) / (1.0 - orbit.e)
     assert abs(back.T - t0) <= 0.5 * orbit.P * (1.0 + 1e-9)
     assert 0.0 <= back.node < 180.0
-    assert back.P == pytest.approx(orbit.P, rel=1e-13)
+    assert pytest.approx(orbit.P, rel=1e-13) == back.P
     assert back.e == pytest.approx(orbit.e, abs=1e-13)
 
 

@@ -130,7 +130,7 @@ def test_ranges_and_no_nan(orbit):
 
 
 def test_face_on_by_hand():
-    """A circle of 8 years: node 0, omega 10, so at T it stands at 10 degrees and gains 45 a year."""
+    """A circle of 8 years: node 0, omega 10, so at T it stands at 10 and gains 45 a year."""
     orbit = Elements(8.0, 2000.0, 0.0, 0.5, 0.0, 0.0, 10.0)
     theta, rho = positions(orbit, [2000.0, 2001.0, 2002.0, 2007.0])
     np.testing.assert_allclose(theta, [10.0, 55.0, 100.0, 325.0], atol=1e-12)

@@ -59,6 +59,7 @@ def test_by_sampling():
     u = regular_from_elements(ORBIT, 1987.25)
     draws = np.random.default_rng(3).multivariate_normal(u, small.covariance, 10_000)
     a = np.hypot(draws[:, 3], draws[:, 4]) + np.hypot(draws[:, 5], draws[:, 6])
-    masses = [mass_from_axis(np.exp(P), axis, PARALLAX) for P, axis in zip(draws[:, 0], a, strict=True)]
+    periods = np.exp(draws[:, 0])
+    masses = [mass_from_axis(P, axis, PARALLAX) for P, axis in zip(periods, a, strict=True)]
     expected = total_mass(ORBIT, PARALLAX, None, small).sigma
     assert np.std(masses) == pytest.approx(expected, rel=0.03)

@@ -84,7 +84,10 @@ def test_scatter_of_the_mass(solutions):
     """a^3/P^2 with its correlation: without it the spread would be far from one."""
     truth = TRUTH.a**3 / TRUTH.P**2
     pairs = [s.axis_cubed_over_period_squared for s in solutions]
-    pulls = [s.error_scale * (v - truth) / sigma for s, (v, sigma) in zip(solutions, pairs, strict=True)]
+    pulls = [
+        s.error_scale * (value - truth) / sigma
+        for s, (value, sigma) in zip(solutions, pairs, strict=True)
+    ]
     assert_gaussian(np.array(pulls), "a^3/P^2")
     for s, (value, sigma) in zip(solutions, pairs, strict=True):
         assert s.mass_total.sigma / s.mass_total.value == pytest.approx(sigma / value, rel=1e-9)

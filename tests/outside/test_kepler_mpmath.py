@@ -28,7 +28,7 @@ def reference(mean, e):
             break
     else:
         raise AssertionError(f"the reference did not converge at M={mean}, e={e}")
-    return 2 * mpmath.pi * turns + (E if M >= 2 * mpmath.pi * turns else -E)
+    return 2 * mpmath.pi * turns + (E if 2 * mpmath.pi * turns <= M else -E)
 
 
 def worst(mean, e):

@@ -24,7 +24,7 @@ def sky(values, epochs):
     P, T, e, a = values[:4]
     i, node, omega = np.radians(values[4:])
     M = 2.0 * np.pi * (((epochs - T) / P) % 1.0)
-    E = np.full_like(M, np.pi)  # from apastron Newton's steps cannot overshoot the root twice
+    E = np.full_like(M, np.pi)  # from apastron Newton's steps find the root for any e below 1
     for _ in range(60):
         E = E - (E - e * np.sin(E) - M) / (1.0 - e * np.cos(E))
     true = 2.0 * np.arctan2(np.sqrt(1.0 + e) * np.sin(E / 2), np.sqrt(1.0 - e) * np.cos(E / 2))
@@ -69,8 +69,8 @@ def fits(request):
     start = start + np.array([0.1, 0.1, 0.005, 0.005, 1.0, 1.0, 1.0])
     residuals = residuals_of(*data)
     found = least_squares(
-        lambda values: residuals(values + origin), start, jac="3-point", method="trf", x_scale="jac",
-        xtol=1e-15, ftol=1e-15, gtol=1e-15, max_nfev=400,
+        lambda values: residuals(values + origin), start, jac="3-point", method="trf",
+        x_scale="jac", xtol=1e-15, ftol=1e-15, gtol=1e-15, max_nfev=400,
     )  # fmt: skip
     found.x = found.x + origin
     return solution, found
@@ -109,7 +109,7 @@ def test_the_same_covariance(fits):
 
 
 def test_errors_of_a_pair_that_scatters_more_are_scaled(fits):
-    """Errors given half as large double the formal chi2 fourfold and the scaled errors not at all."""
+    """Errors given half as large: chi2 fourfold, formal errors halved, scaled ones as before."""
     solution, _ = fits
     o = solution.residuals
     pair = relorbit.Pair.from_arrays(

@@ -7,7 +7,7 @@ from dataclasses import replace
 import matplotlib
 import numpy as np
 import pytest
-from conftest import INVENTED, solution_of
+from invented_pairs import INVENTED, solution_of
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 
 from relorbit.derive.ephemeris import ephemeris, turning_points
@@ -133,7 +133,9 @@ def test_nothing_on_the_sheet_overlaps_or_is_cut(elements, simulated, pair):
     boxes = [(t.get_text(), t.get_window_extent(renderer)) for t in figure.texts if t.get_text()]
     boxes += [("axes", axes.get_tightbbox(renderer)) for axes in figure.axes]
     boxes.append(("legend", figure.legends[0].get_window_extent(renderer)))
+    foot = 0.48 / 11.69 * figure.bbox.height
     for slot, (text, box) in enumerate(boxes):
+        assert text.startswith("Picture:") or box.y0 > foot, text
         assert figure.bbox.x0 < box.x0 and box.x1 < figure.bbox.x1, text
         assert figure.bbox.y0 < box.y0 and box.y1 < figure.bbox.y1, text
         for other, second in boxes[slot + 1 :]:

@@ -4,15 +4,16 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from conftest import INVENTED, simulate
+from invented_pairs import INVENTED, simulate
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.colors import to_hex
+from matplotlib.figure import Figure
 
 from relorbit.derive.ephemeris import ephemeris
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements, positions
 from relorbit.show.colours import MARKS
-from relorbit.show.orbit_plot import apparent_orbit
+from relorbit.show.orbit_plot import apparent_orbit, draw_apparent_orbit
 from relorbit.show.view import round_length
 from relorbit.solve.residuals import residuals
 
@@ -169,6 +170,17 @@ def test_nothing_is_cut_and_the_legend_lies_outside(elements):
     assert box.x0 >= 0.0 and box.x1 <= width and box.y0 >= 0.0 and box.y1 <= height
     pixels = axes.transData.transform(sky(m.theta, m.rho))
     assert all(axes.bbox.contains(*spot) for spot in pixels)
+
+
+@pytest.mark.parametrize("box", [(0.1, 0.1, 0.8, 0.2), (0.1, 0.1, 0.2, 0.8)])
+def test_axes_of_any_shape_keep_equal_scales_and_the_whole_view(box, measures):
+    figure = Figure(figsize=(8.0, 8.0))
+    axes = figure.add_axes(box)
+    view = draw_apparent_orbit(axes, INVENTED, residuals(INVENTED, measures))
+    FigureCanvasAgg(figure).draw()
+    assert axes.get_xlim() == view.x and axes.get_ylim() == view.y
+    corner, east, north = axes.transData.transform([[0.0, 0.0], [0.1, 0.0], [0.0, 0.1]])
+    assert abs((east - corner)[0]) == pytest.approx(abs((north - corner)[1]), rel=1e-6)
 
 
 def test_the_scale_bar_is_as_long_as_it_says():

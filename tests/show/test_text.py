@@ -6,7 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from conftest import INVENTED, simulate, solution_of
+from invented_pairs import INVENTED, simulate, solution_of
 
 from relorbit.derive.ephemeris import Ephemeris, TurningPoint, ephemeris, turning_points
 from relorbit.derive.mass import mass_budget
@@ -124,6 +124,8 @@ def test_every_measure_has_the_figures_of_its_own_error():
     first, second = row_of(table, "1990.500"), row_of(table, "1991.250")
     assert first[1:3] == ["20.0", "0.950"] and first[-2:] == ["eyepiece", "A"]
     assert float(first[3]) == pytest.approx(compared.d_theta[0], abs=0.051)
+    assert float(first[4]) == pytest.approx(compared.d_rho[0], abs=0.00051)
+    assert float(first[5]) == pytest.approx(compared.arc[0], abs=0.00051)
     assert float(first[7]) == pytest.approx(compared.rho_in_sigma[0], abs=0.051)
     assert second[1] == second[3] == second[5] == "-" and second[2] == "0.9812"
     assert row_of(table, "x")[1] == "1993.000" and "x: not used (1)" in table

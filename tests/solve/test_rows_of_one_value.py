@@ -58,18 +58,20 @@ def test_rows_of_one_value_are_used(keep_theta: np.ndarray, keep_rho: np.ndarray
 
 def test_an_angle_alone_still_counts() -> None:
     """Angles added to a list of positions tighten the orbit as much as they should."""
-    few, more = ROWS % 4 == 0, ROWS >= 0
-    alone = solve(with_only(few, few)).sigma
-    joined = solve(with_only(more, few)).sigma
+    few = ROWS % 4 == 0
+    joined = with_only(ROWS >= 0, few)
+    alone = solve(joined.with_measures(joined.measures.select(few))).sigma
+    joined = solve(joined).sigma
     for name in ("P", "T", "e", "i", "node", "omega"):
         assert joined[name] < 0.85 * alone[name]
 
 
 def test_residuals_of_a_value_that_is_not_there_are_missing() -> None:
-    solution = solve(with_only(ROWS % 2 == 0, ROWS % 3 == 0))
+    keep_theta, keep_rho = ROWS % 2 == 0, (ROWS % 2 == 1) | (ROWS % 3 == 0)
+    solution = solve(with_only(keep_theta, keep_rho))
     r = solution.residuals
-    assert np.array_equal(np.isfinite(r.d_theta), ROWS % 2 == 0)
-    assert np.array_equal(np.isfinite(r.d_rho), ROWS % 3 == 0)
+    assert np.array_equal(np.isfinite(r.d_theta), keep_theta)
+    assert np.array_equal(np.isfinite(r.d_rho), keep_rho)
     assert r.chi2 == pytest.approx(solution.chi2)
     rows = r.to_dict()["rows"]
     assert rows[1]["theta"] is None and rows[1]["d_theta"] is None
