@@ -116,7 +116,7 @@ def _run(module: object, options: argparse.Namespace) -> int:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except Exception:
-        return _complain(_report_fault(), FAULT)
+        return _complain(report_fault(), FAULT)
 
 
 def _complain(message: str, status: int) -> int:
@@ -124,7 +124,7 @@ def _complain(message: str, status: int) -> int:
     return status
 
 
-def _report_fault() -> str:
+def report_fault() -> str:
     """Write the details of an internal fault to a file and say where."""
     with tempfile.NamedTemporaryFile(
         "w", prefix="relorbit-fault-", suffix=".txt", delete=False, encoding="utf-8"

@@ -126,7 +126,7 @@ class CellEditor:
         if not words:
             self.wrong.place_forget()
 
-    def take(self) -> bool:
+    def take(self, stay: bool = True) -> bool:
         """Take over what was typed; where it cannot be, say why and keep the text."""
         if not self.open:
             return True
@@ -138,7 +138,8 @@ class CellEditor:
             self.open = True
             self._say(error.what)
             self._place_field()
-            self.field.focus_set()
+            if stay:
+                self.field.focus_set()
             return False
         self.field.place_forget()
         self._say("")
@@ -160,16 +161,5 @@ class CellEditor:
 
     def _left(self) -> None:
         """The focus went elsewhere: what can be taken is taken, what cannot stays to be seen."""
-        focus = self.table.focus_get_safely()
-        if self.open and (focus is None or "popdown" not in focus):
-            text = self.field.get()
-            self.open = False
-            try:
-                self.table.model.edit_cell(self._row, self._column, text)
-            except InputError as error:
-                self.open = True
-                self._say(error.what)
-                self._place_field()
-                return
-            self.field.place_forget()
-            self._say("")
+        if self.open and "popdown" not in str(self.field.tk.call("focus")):
+            self.take(stay=False)

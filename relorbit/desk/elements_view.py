@@ -10,7 +10,7 @@ from relorbit.derive.consequences import nudged
 from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import ORBIT, PAIR, DeskModel
 from relorbit.desk.theme import Palette, Sizes
-from relorbit.desk.words import LETTERS, TITLES, UNITS
+from relorbit.desk.words import LETTERS, UNITS
 from relorbit.measures.pair import RecordedOrbit
 from relorbit.orbit.elements import NAMES, Elements
 from relorbit.show.numbers import fixed, known, significant
@@ -138,7 +138,7 @@ class ElementsView(ttk.Frame):
             )
             return
         self.chi2.configure(text=f"\u03c7\u00b2 {fixed(following.chi2, 1)}")
-        self.fit.configure(text=f"for {following.numbers} values of theta and rho in use")
+        self.fit.configure(text=f"for {following.numbers} values in use")
         self._show_mass(following.mass, orbit)
         self.word.configure(text=self._standing(orbit))
 
@@ -151,7 +151,7 @@ class ElementsView(ttk.Frame):
         figures = mass_figures(total).replace("+/-", "\u00b1") if total else significant(mass, 4)
         self.mass.configure(text=f"mass {figures}")
         pair = self.model.pair
-        self.parallax.configure(text=f"suns, at {pair.parallax_mas:g} mas")
+        self.parallax.configure(text=f"solar masses, at {pair.parallax_mas:g} mas")
 
     def _standing(self, orbit: object) -> str:
         """Where this orbit comes from."""

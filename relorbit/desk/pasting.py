@@ -97,7 +97,7 @@ def _is_content(line: str) -> bool:
 
 def _has_header(lines: Sequence[str], first: int) -> bool:
     """True when the first row does not begin with a number, or a comment above names columns."""
-    if not re.match(r'\s*"?[+-]?[0-9]', lines[first - 1]):
+    if not re.match(r'\s*[|"]?\s*[+-]?[0-9]', lines[first - 1]):
         return True
     above = [line.lstrip(' "').lstrip("".join(COMMENTS)) for line in lines[: first - 1]]
     return any(looks_like_header(re.split(r"[\t;|,\s]+", line.strip())) for line in above)
@@ -106,7 +106,7 @@ def _has_header(lines: Sequence[str], first: int) -> bool:
 def _layout(lines: Sequence[str], first: int, columns: Sequence[str]) -> Layout:
     """How rows without a header line are set out, by the first of them."""
     delimiter = _delimiter(lines[first - 1])
-    width = len(lines[first - 1].strip("\r\n ").split(delimiter))
+    width = _count(lines[first - 1], delimiter)
     order = USUAL_ORDER
     if delimiter == "\t" and (width > len(USUAL_ORDER) or width == len(columns)):
         order = tuple(columns)
@@ -118,7 +118,7 @@ def _layout(lines: Sequence[str], first: int, columns: Sequence[str]) -> Layout:
             line=first,
         )
     for number, line in enumerate(lines[first:], first + 1):
-        count = len(line.strip("\r\n ").split(delimiter))
+        count = _count(line, delimiter)
         if _is_content(line) and (count > width or (delimiter is None and count < width)):
             raise InputError(
                 f"{count} {'value' if count == 1 else 'values'} where the first row has {width}; "
@@ -128,6 +128,11 @@ def _layout(lines: Sequence[str], first: int, columns: Sequence[str]) -> Layout:
             )
     placed = tuple(LayoutColumn(name, place=k + 1) for k, name in enumerate(order[:width]))
     return Layout(PASTED, "delimited", placed, delimiter=delimiter, header=False)
+
+
+def _count(line: str, delimiter: str | None) -> int:
+    edges = " |" if delimiter == "|" else " "
+    return len(line.strip(edges).split(delimiter))
 
 
 def _delimiter(row: str) -> str | None:

@@ -62,6 +62,7 @@ class PlotView(ttk.Frame):
         self._on_menu = on_menu
         self._kept: Any = None
         self._pending: str | None = None
+        self._pause: str | None = None
         self._rebuild = True
         self._drag: Drag | None = None
         self._space = False
@@ -80,6 +81,7 @@ class PlotView(ttk.Frame):
             ("draw_event", self._on_draw), ("button_press_event", self._on_press),
             ("motion_notify_event", self._on_motion), ("button_release_event", self._on_release),
             ("scroll_event", self._on_scroll), ("figure_leave_event", self._on_leave),
+            ("resize_event", self._on_resize),
         ):  # fmt: skip
             self.canvas.mpl_connect(name, call)
         self.widget.bind("<KeyPress-space>", lambda _: setattr(self, "_space", True), add=True)
@@ -126,17 +128,23 @@ class PlotView(ttk.Frame):
 
     def _draw_moving(self) -> None:
         for artist in sorted(self.moving, key=lambda one: one.get_zorder()):
-            if artist.axes is not None:
+            if not (isinstance(artist, Line2D) and not len(artist.get_xdata())):
                 artist.axes.draw_artist(artist)
 
     def _on_draw(self, event: DrawEvent) -> None:
         self._kept = self.canvas.copy_from_bbox(self.figure.bbox)
         self._draw_moving()
 
+    def _on_resize(self, event: object) -> None:
+        self._kept = None
+        self.redraw()
+
     def _forget_pending(self) -> None:
-        if self._pending is not None:
-            self.after_cancel(self._pending)
-            self._pending = None
+        for name in ("_pending", "_pause"):
+            waiting = getattr(self, name)
+            if waiting is not None:
+                self.after_cancel(waiting)
+            setattr(self, name, None)
 
     def wear(self, palette: Palette) -> None:
         """Take on other colours."""
@@ -280,7 +288,7 @@ class PlotView(ttk.Frame):
     def pan(self, axes: Axes, right: float, up: float) -> None:
         """Move what is shown by pixels."""
         box = axes.bbox
-        corners = np.array([(box.x0, box.y0), (box.x1, box.y1)]) + (right, up)
+        corners = np.array([(box.x0, box.y0), (box.x1, box.y1)]) + np.array([right, up])
         self._set_corners(axes, corners, 0)
 
     def _set_corners(self, axes: Axes, corners: NDArray, keys: int) -> None:

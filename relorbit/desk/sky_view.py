@@ -18,13 +18,13 @@ from relorbit.desk.marks import Shown, draw_groups, shown
 from relorbit.desk.model import ORBIT, PAIR, SELECTION, VIEW, DeskModel
 from relorbit.desk.plot_view import PlotView, broken
 from relorbit.desk.theme import Palette, recolour
-from relorbit.desk.words import position_in_words
+from relorbit.desk.words import position_in_words, words_of
 from relorbit.errors import InputError
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import TWO_PI
 from relorbit.show.colours import CURVE_WIDTH, hairline
 from relorbit.show.marks import quiet
-from relorbit.show.numbers import calendar_date, fixed
+from relorbit.show.numbers import fixed
 from relorbit.show.orbit_plot import (
     draw_direction,
     draw_lone_values,
@@ -36,6 +36,7 @@ from relorbit.show.orbit_plot import (
 from relorbit.show.overlays import CURVE_POINTS, draw_other_orbit
 from relorbit.show.view import View, draw_corners, frame_axes, place, sky, view_of
 
+PAUSE = 150  # milliseconds
 RING = np.linspace(0.0, TWO_PI, CURVE_POINTS)
 INSETS = (46.0, 8.0, 32.0, 8.0)  # left, right, bottom, top: pixels at 96 dots an inch
 
@@ -54,7 +55,9 @@ class SkyView(PlotView):
         self._others = others
         self._orientation = model.orientation
         self._decor: list[Artist] = []
+        self._decor_of: Elements | None = None
         self._corners: list[Artist] = []
+        self._scale = 1.0  # arcsec a pixel
         super().__init__(parent, model, palette, on_menu)
         self.axes: Axes = self.figure.add_axes((0.1, 0.1, 0.8, 0.8))
         self.dates = DateBar(self, model)
@@ -65,17 +68,17 @@ class SkyView(PlotView):
 
     def build(self) -> None:
         axes, model = self.axes, self.model
-        limits = None if self.framed or self._orientation != model.orientation else (
-            axes.get_xlim(), axes.get_ylim())  # fmt: skip
+        kept = None if self.framed or self._orientation != model.orientation else (
+            np.mean(axes.get_xlim()), np.mean(axes.get_ylim()), self._scale)  # fmt: skip
         self._orientation = model.orientation
         axes.clear()
         axes.set_facecolor(self.palette.paper)
-        self._corners, self._decor = [], []
+        self._corners, self._decor, self._decor_of = [], [], None
         marks = shown(model)
         quiet(axes)
         self._put_axes()
         others = self._others()
-        self._frame(marks, others, limits)
+        self._frame(marks, others, kept)
         draw_primary(axes)
         for slot, (label, elements) in enumerate(others.items()):
             draw_other_orbit(axes, elements, label, slot)
@@ -97,7 +100,7 @@ class SkyView(PlotView):
                  1 - (bottom + top) / height)
             )  # fmt: skip
 
-    def _frame(self, marks: Shown, others: Mapping[str, Elements], limits: tuple | None) -> None:
+    def _frame(self, marks: Shown, others: Mapping[str, Elements], kept: tuple | None) -> None:
         following, elements = self.model.consequences, self.model.elements
         if following is not None:
             view = orbit_view(
@@ -110,23 +113,28 @@ class SkyView(PlotView):
             if len(needed) == 1:
                 needed = np.array([(-1.0, -1.0), (1.0, 1.0)])
             view = view_of(needed, np.empty((0, 2)), self.model.orientation)
-        frame_axes(self.axes, view)
-        self.axes.set_aspect("equal", adjustable="datalim")
         self._view = view
-        if limits is not None:
-            self.axes.set_xlim(limits[0])
-            self.axes.set_ylim(limits[1])
+        wide, high = self.axes.bbox.size
+        spans = view.width / wide, view.width * view.shape / high
+        self._show(*(kept or (np.mean(view.x), np.mean(view.y), max(spans))))
+
+    def _show(self, x: float, y: float, scale: float) -> None:
+        """Show the sky around a place (east, north), `scale` arcsec a pixel both ways."""
+        half = 0.5 * scale * self.axes.bbox.size
+        right, up = self._view.on_page((1.0, 1.0))
+        self._scale = scale
+        self.axes.set_xlim(x - right * half[0], x + right * half[0])
+        self.axes.set_ylim(y - up * half[1], y + up * half[1])
 
     def _put_corners(self) -> None:
         """Compass and scale bar for the limits there are now."""
         for artist in self._corners:
             artist.remove()
         axes = self.axes
-        axes.apply_aspect()
         view = View(axes.get_xlim(), axes.get_ylim(), self._view.corners, self.model.orientation)
         before = set(axes.get_children())
         frame_axes(axes, view)
-        axes.set_aspect("equal", adjustable="datalim")
+        axes.set_aspect("auto")  # the limits make the scales equal
         draw_corners(axes, view)
         self._corners = [one for one in axes.get_children() if one not in before]
         self._view = view
@@ -145,23 +153,22 @@ class SkyView(PlotView):
         self._radius = line(color=p.today, linewidth=0.8, zorder=2.5)
         self._companion = line(marker="o", markersize=7, markerfacecolor=p.today, zorder=5,
                                markeredgecolor=p.paper, linestyle="none")  # fmt: skip
+        self._periastron = line(marker="D", markersize=4, color=p.ink, linestyle="none", zorder=3)
         self._ring = self.ring(axes)
-        self._still_moving = [self._hairs, self._curve, self._radius, self._companion, self._ring]
+        self._still_moving = [self._hairs, self._curve, self._radius, self._companion,
+                              self._periastron, self._ring]  # fmt: skip
 
     def feed(self) -> None:
         following, elements = self.model.consequences, self.model.elements
         marks = shown(self.model)
         measured = np.stack(sky(marks.theta, marks.rho))
         self.spots = {self.axes: measured.T}
-        for artist in self._decor:
-            artist.remove()
-        self._decor = []
+        self._follow_decor()
         if following is not None:
             of = following.residuals
             self._curve.set_data(*place(elements, RING))
             self._hairs.set_data(*broken(measured, np.stack(sky(of.theta_computed,
                                                                 of.rho_computed))))  # fmt: skip
-            self._put_decor(elements)
         else:
             self._curve.set_data([], [])
             self._hairs.set_data([], [])
@@ -169,9 +176,35 @@ class SkyView(PlotView):
         self.feed_ring(self._ring)
         self.moving = [*self._still_moving, *self._decor]
 
+    def _follow_decor(self) -> None:
+        """What stands on the curve is taken away while one nudges, and put back in a pause."""
+        elements = self.model.elements
+        if elements is not None and elements is self._decor_of:
+            return
+        for artist in self._decor:
+            artist.remove()
+        self._decor, self._decor_of = [], None
+        if self._pause is not None:
+            self.after_cancel(self._pause)
+            self._pause = None
+        if elements is not None and self.model.nudging:
+            self._periastron.set_data(*place(elements, np.zeros(1)))
+            self._pause = self.after(PAUSE, self._paused)
+        elif elements is not None:
+            self._put_decor(elements)
+
+    def _paused(self) -> None:
+        self._pause = None
+        if self.model.elements is not None and not self._rebuild:
+            self._put_decor(self.model.elements)
+            self.moving = [*self._still_moving, *self._decor]
+            self.repaint()
+
     def _put_decor(self, elements: Elements) -> None:
-        """What stands on the curve: periastron, node, arrowhead, lone angles and separations."""
+        """Periastron, node, arrowhead, lone angles and separations."""
         axes, of, view = self.axes, self.model.consequences.residuals, self._view
+        self._decor_of = elements
+        self._periastron.set_data([], [])
         before = set(axes.get_children())
         draw_periastron(axes, elements, view)
         draw_node(axes, elements, view)
@@ -197,9 +230,9 @@ class SkyView(PlotView):
 
     def on_change(self, kinds: frozenset[str]) -> None:
         self.dates.on_change(kinds)
-        if PAIR in kinds or (VIEW in kinds and self._orientation != self.model.orientation):
-            self.redraw()
-        elif ORBIT in kinds and self.framed and not self.model.nudging:
+        turned = VIEW in kinds and self._orientation != self.model.orientation
+        moved = ORBIT in kinds and self.framed and not self.model.nudging
+        if PAIR in kinds or turned or moved:
             self.redraw()
         elif kinds & {ORBIT, SELECTION, VIEW} and self._kept is not None and not self._rebuild:
             self.feed()
@@ -208,9 +241,9 @@ class SkyView(PlotView):
     def set_limits(
         self, axes: Axes, x: tuple[float, float], y: tuple[float, float], keys: int
     ) -> None:
-        axes.set_xlim(x)
-        axes.set_ylim(y)
+        self._show(np.mean(x), np.mean(y), abs(x[1] - x[0]) / axes.bbox.width)
         self._put_corners()
+        self._decor_of = None  # its size goes with the view
         self.feed()
         self.redraw(rebuild=False)
 
@@ -229,8 +262,6 @@ class DateBar(ttk.Frame):
         self.slider.grid(row=0, column=2, sticky="ew", padx=4)
         self.place = ttk.Label(self, anchor="e", width=19)
         self.place.grid(row=0, column=3)
-        self.date = ttk.Label(self, style="Quiet.TLabel", anchor="e", width=10)
-        self.date.grid(row=0, column=4, padx=(4, 0))
         self.columnconfigure(2, weight=1)
         self.field.bind("<Return>", self._typed)
         self.field.bind("<FocusOut>", self._typed)
@@ -244,7 +275,6 @@ class DateBar(ttk.Frame):
             self.slider.set(model.epoch)
             self._moved_by_model = False
             self._write(fixed(model.epoch, 2))
-            self.date.configure(text=calendar_date(model.epoch))
             text = ""
             if model.elements is not None:
                 at = ephemeris(model.elements, model.epoch)
@@ -268,6 +298,4 @@ class DateBar(ttk.Frame):
             self.model.look(epoch=epoch_from_text(text))
         except InputError as error:
             self.field.configure(style="Wrong.TEntry")
-            self.date.configure(text="no date")
-            self.place.configure(text="")
-            self.field.wrong = str(error)
+            self.place.configure(text=words_of(error))

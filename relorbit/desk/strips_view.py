@@ -99,7 +99,8 @@ class StripsView(PlotView):
         for technique, used in groups(of):
             edge = self.palette.edges[technique]
             (bars,) = panel.plot([], [], color=edge, linewidth=hairline(len(of)), zorder=2.5,
-                                 alpha=0.7 if used else 0.35, animated=True)  # fmt: skip
+                                 alpha=0.7 if used else 0.35, animated=True,
+                                 antialiased=False)  # fmt: skip
             line = group_line(panel, technique, used, len(of), self.palette, animated=True)
             self._lines[panel][technique, used] = line
             line.bars = bars
@@ -175,12 +176,10 @@ class StripsView(PlotView):
     # -- following -----------------------------------------------------------------------------
 
     def on_change(self, kinds: frozenset[str]) -> None:
-        following = self.model.consequences
-        if PAIR in kinds or (following is None) != (not self._lines) or (
-            VIEW in kinds and self._by_phase != self.model.by_phase
-        ):  # fmt: skip
-            self.redraw()
-        elif ORBIT in kinds and self.framed and self._outgrown():
+        begun = (self.model.consequences is None) != (not self._lines)
+        refolded = VIEW in kinds and self._by_phase != self.model.by_phase
+        grown = ORBIT in kinds and self.framed and self._outgrown()
+        if PAIR in kinds or begun or refolded or grown:
             self.redraw()
         elif kinds & {ORBIT, SELECTION, VIEW} and self._kept is not None and not self._rebuild:
             self.feed()

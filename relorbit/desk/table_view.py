@@ -334,12 +334,16 @@ class TableView(ttk.Frame):
             self.filters.offer(self.model.pair.measures)
             self._choose_rows()
         elif ORBIT in kinds and self._sort and self._sort[0].startswith("off_"):
-            if not self.model.nudging:  # a table that jumps about while one nudges helps nobody
-                self._choose_rows()
+            self._orbit_sorted()
         if SELECTION in kinds and len(self.model.selection) and not self.editor.open:
             self._show_selection()
         if kinds & {PAIR, ORBIT, SELECTION}:
             self.refill()
+
+    def _orbit_sorted(self) -> None:
+        # a table that jumps about while one nudges helps nobody
+        if not self.model.nudging:
+            self._choose_rows()
 
     def _show_selection(self) -> None:
         """Scroll to the selection where none of it is visible, and put the cursor there."""

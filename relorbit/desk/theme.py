@@ -91,10 +91,9 @@ def set_fonts(root: tk.Misc) -> None:
         ("DeskName", NAME_SIZE, "bold"),
         ("DeskReading", READING_SIZE, "normal"),
     ):
-        if name not in existing:
-            tkfont.Font(root, name=name, exists=False, family=family, size=size, weight=weight)
-        else:
-            tkfont.nametofont(name, root).configure(family=family, size=size, weight=weight)
+        # a font made through tkfont.Font goes when its Python object does
+        how = "configure" if name in existing else "create"
+        root.tk.call("font", how, name, "-family", family, "-size", size, "-weight", weight)
 
 
 def dress(root: tk.Tk, palette: Palette) -> None:
@@ -132,8 +131,10 @@ def dress(root: tk.Tk, palette: Palette) -> None:
 def _dress_buttons(style: ttk.Style, sizes: Sizes, p: Palette) -> None:
     style.configure(
         "TButton", padding=(sizes(8), sizes(3)), background=p.ground, bordercolor=p.line,
-        relief="flat", borderwidth=1,
+        lightcolor=p.ground, darkcolor=p.ground, relief="raised", borderwidth=1,
     )  # fmt: skip
+    style.configure("Choice.TButton", anchor="w")
+    style.configure("First.TButton", anchor="w")
     style.map(
         "TButton",
         background=[("disabled", p.ground), ("active", p.chosen)],
@@ -142,18 +143,19 @@ def _dress_buttons(style: ttk.Style, sizes: Sizes, p: Palette) -> None:
         darkcolor=[("active", p.chosen)],
     )
     style.configure("Step.TButton", padding=(0, 0), width=2)
-    style.configure(
-        "Next.TButton", background=p.accent, foreground=p.on_accent, bordercolor=p.accent,
-        lightcolor=p.accent, darkcolor=p.accent,
-    )  # fmt: skip
-    style.map(
-        "Next.TButton",
-        background=[("disabled", p.ground), ("active", p.accent)],
-        foreground=[("disabled", p.quiet)],
-        lightcolor=[("disabled", p.ground)],
-        darkcolor=[("disabled", p.ground)],
-        bordercolor=[("disabled", p.line), ("focus", p.ink)],
-    )
+    for name in ("Next.TButton", "First.TButton"):
+        style.configure(
+            name, background=p.accent, foreground=p.on_accent, bordercolor=p.accent,
+            lightcolor=p.accent, darkcolor=p.accent,
+        )  # fmt: skip
+        style.map(
+            name,
+            background=[("disabled", p.ground), ("active", p.accent)],
+            foreground=[("disabled", p.quiet)],
+            lightcolor=[("disabled", p.ground), ("active", p.accent)],
+            darkcolor=[("disabled", p.ground), ("active", p.accent)],
+            bordercolor=[("disabled", p.line), ("focus", p.ink)],
+        )
     for kind in ("TCheckbutton", "TRadiobutton"):
         style.configure(
             kind, indicatorbackground=p.paper, indicatorforeground=p.ink,
@@ -189,6 +191,9 @@ def _dress_fields(style: ttk.Style, sizes: Sizes, p: Palette) -> None:
         selectforeground=[("readonly", p.ink)],
         bordercolor=[("focus", p.accent)],
     )
+    style.layout("Cell.TCombobox", [("Combobox.field", {"sticky": "nswe", "children": [
+        ("Combobox.padding", {"sticky": "nswe", "children": [
+            ("Combobox.textarea", {"sticky": "nswe"})]})]})])  # fmt: skip
     style.configure(
         "TScrollbar", background=p.ground, troughcolor=p.paper, bordercolor=p.line,
         arrowcolor=p.quiet, arrowsize=sizes(11), gripcount=0,

@@ -15,7 +15,7 @@ from relorbit.solve.refine import Holding, Problem, Refined, polar_problem, refi
 from relorbit.solve.search import ECCENTRICITIES, period_grid, search
 
 STARTS = 32  # minima of the map that are followed down
-FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 200
+FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 100
 ALWAYS_FOLLOWED = 10, 4  # best orbits that go on whatever their chi2, at first and at last
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most

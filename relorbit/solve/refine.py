@@ -1,8 +1,7 @@
 """Nonlinear least squares on (theta, rho), one orbit or many at a time.
 
 The unknowns are the regular coordinates of `relorbit.orbit.regular`, the Jacobian is exact, and
-the step is that of Levenberg (1944) and Marquardt (1963), with the damping rule of Nielsen (1999,
-IMM-REP-1999-05, from memory). Held elements are kept by stepping in the directions that do not
+the step is that of Levenberg (1944) and Marquardt (1963, J. SIAM 11, 431). Held elements are kept by stepping in the directions that do not
 change them, and putting them back to their values after each step.
 """
 
@@ -24,11 +23,13 @@ from relorbit.orbit.regular import (
     position_and_jacobian,
     regular_from_elements,
 )
-from relorbit.solve.linear import SkyData
+from relorbit.solve.linear import SkyData, solve_scaled
 from relorbit.solve.observations import Observations
 
 HIGHEST_E = 0.99999
+FIRST_DAMPING, LESS_DAMPING, MORE_DAMPING = 1e-4, 0.1, 8.0
 MOST_DAMPING = 1e10  # an orbit that does not get better with as short a step as that is at rest
+SLOW = 20  # iterations after which chi2 is taken to have a bent valley
 LARGEST_STEP = 1.5  # in ln P, of one iteration
 # residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits (c, 7)
 WithJacobian = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
@@ -177,8 +178,8 @@ def refine(
     problem: Problem,
     u: FloatArray,
     held: Holding | None = None,
-    most_iterations: int = 60,
-    tolerance: float = 1e-9,
+    most_iterations: int = 100,
+    tolerance: float = 1e-6,
     columns: slice = slice(None),
     on_step: Callable[[], None] | None = None,
 ) -> Refined:
@@ -203,7 +204,7 @@ def refine(
     t0 = problem.reference_epoch
     u = held.put_back(np.array(u, dtype=float, ndmin=2), t0)
     chi2, normal, right = _normal_equations(problem, u)
-    damping, growth = np.full(chi2.size, 1e-4), np.full(chi2.size, 2.0)
+    damping = np.full(chi2.size, FIRST_DAMPING)
     active = np.arange(chi2.size)
     iteration = 0
     while active.size and iteration < most_iterations:
@@ -214,21 +215,27 @@ def refine(
         full, expected = _damped_step(
             normal[active], right[active], damping[active], basis, columns
         )
-        moving = expected >= tolerance
-        if not moving.all():
-            active, full, expected = active[moving], full[moving], expected[moving]
-            if not active.size:
-                break
         trial = u[active] + full
         inside = np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E
         inside &= np.isfinite(full).all(axis=1) & (np.abs(full[:, 0]) < LARGEST_STEP)
-        if not inside.all():
-            trial = np.where(inside[:, None], trial, u[active])
-        trial = held.put_back(trial, t0)
-        chi2_trial, normal_trial, right_trial = _normal_equations(problem, trial)
-        fall = chi2[active] - chi2_trial
-        better = inside & (fall > 0.0)
-        _adapt(damping, growth, active, better, fall, expected)
+        trial = held.put_back(np.where(inside[:, None], trial, u[active]), t0)
+        at_rest = (expected < tolerance) & (damping[active] < 1.0)
+        if at_rest.any():
+            # chi2 is as good as quadratic here: the last step needs no look at where it leads
+            last = active[at_rest]
+            u[last] = trial[at_rest]
+            chi2[last] -= np.where(inside, expected, 0.0)[at_rest]
+            active, trial, inside = active[~at_rest], trial[~at_rest], inside[~at_rest]
+            if not active.size:
+                break
+        tried = _normal_equations(problem, trial)
+        if iteration > SLOW and basis is None:
+            # a bent valley: the constants, which are nearly linear, follow at once
+            trial[:, 3:] += solve_scaled(tried[1][:, 3:, 3:], tried[2][:, 3:])
+            tried = _normal_equations(problem, trial)
+        chi2_trial, normal_trial, right_trial = tried
+        better = inside & (chi2_trial < chi2[active])
+        damping[active] *= np.where(better, LESS_DAMPING, MORE_DAMPING)
         moved = active[better]
         u[moved], chi2[moved] = trial[better], chi2_trial[better]
         normal[moved], right[moved] = normal_trial[better], right_trial[better]
@@ -259,34 +266,20 @@ def _damped_step(
         normal, right = across @ normal @ basis, (across @ right[..., None])[..., 0]
     else:
         normal, right = normal[:, columns, columns], right[:, columns]
-    diagonal = np.einsum("cjj->cj", normal)
+    diagonal = np.diagonal(normal, axis1=1, axis2=2)
     scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
-    scaled = normal * scale[:, :, None] * scale[:, None, :]
-    scaled += np.eye(scaled.shape[-1]) * (damping[:, None, None] + 1e-13)
-    scaled_right = scale * right
-    inner = np.linalg.solve(scaled, scaled_right[..., None])[..., 0]
-    expected = np.einsum("cj,cj->c", inner, scaled_right + damping[:, None] * inner)
+    scaled = normal * (scale[:, :, None] * scale[:, None, :])
+    slots = np.arange(scaled.shape[-1])
+    scaled[:, slots, slots] = 1.0 + 1e-13 + damping[:, None]
+    right = scale * right
+    inner = np.linalg.solve(scaled, right[..., None])[..., 0]
+    expected = (inner * (right + damping[:, None] * inner)).sum(axis=1)
     step = scale * inner
     if basis is not None:
         return (basis @ step[..., None])[..., 0], expected
     full = np.zeros((step.shape[0], SIZE))
     full[:, columns] = step
     return full, expected
-
-
-def _adapt(
-    damping: FloatArray,
-    growth: FloatArray,
-    active: NDArray[np.intp],
-    better: NDArray[np.bool_],
-    fall: FloatArray,
-    expected: FloatArray,
-) -> None:
-    """Nielsen's rule: less damping by how well the linear model foretold the fall of chi2."""
-    ratio = np.where(better, fall, 0.0) / np.maximum(expected, 1e-300)
-    gain = np.maximum(1.0 / 10.0, 1.0 - (2.0 * np.minimum(ratio, 1.0) - 1.0) ** 3)
-    damping[active] *= np.where(better, gain, growth[active])
-    growth[active] = np.where(better, 2.0, growth[active] * 2.0)
 
 
 def covariance(problem: Problem, u: FloatArray, held: Holding | None = None) -> FloatArray:

@@ -17,6 +17,7 @@ VAGUE = 0.2  # relative error of the period that is worth a warning
 WELL_KNOWN_E = 0.2  # error of e up to which an orbit can be called circular
 VAGUE_NODE = 30.0  # error of the node, degrees, that is worth a warning
 NEARLY_FACE_ON = 60.0  # how far from edge-on, degrees, an orbit is nearly face-on
+HIGHEST_E = 0.999  # beyond this an ellipse is no longer told from a needle
 POOR_FIT = 2.0  # reduced chi2 above which the measures disagree with their own errors
 PLAUSIBLE_MASS = (0.05, 300.0)  # total mass in solar masses: common practice, no published source
 
@@ -47,6 +48,12 @@ def _of_the_orbit(s: Solution) -> Iterator[Notice]:
     sigma_P = s.sigma["P"]
     if sigma_P is not None and sigma_P > VAGUE * s.elements.P:
         yield Notice("period-uncertain", f"the period is only known to {sigma_P:.2g} years")
+    if s.elements.e > HIGHEST_E and "e" not in s.held:
+        yield Notice(
+            "eccentricity-at-limit",
+            "the eccentricity runs to 1: needles seen nearly edge-on fit best, and a, i, e and the "
+            "mass mean little; measures around the closest approach would cure it",
+        )
     yield from _without_meaning(s)
     if s.mass_total is not None:
         low, high = PLAUSIBLE_MASS

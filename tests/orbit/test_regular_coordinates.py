@@ -210,7 +210,7 @@ def uncertainty():
 
 
 @pytest.mark.parametrize("name", PLAIN)
-def test_covariance_by_sampling_the_linear_map(name, uncertainty):
+def test_covariance_is_carried_by_the_jacobian(name, uncertainty):
     orbit = BY_HAND[name].near(T0)
     matrix = campbell_covariance(orbit, uncertainty)
     jacobian = campbell_jacobian(regular_from_elements(orbit, T0), T0)

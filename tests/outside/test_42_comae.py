@@ -83,8 +83,8 @@ def test_the_errors_are_worth_something(solution):
 
 
 def test_the_measures_name_one_orbit(solution):
-    """The period of 25 years alone: no orbit of another one comes near, and no rival is named."""
-    assert solution.alternatives == ()
+    """The period of 25 years alone: no other orbit comes near, and none twice under two names."""
+    assert all(other.chi2 > solution.chi2 + 15.0 for other in solution.alternatives)
     assert "rival-orbits" not in {notice.code for notice in solution.warnings}
     assert solution.used == 20
     # printed errors there are none; the usual ones are a quarter too small for these

@@ -104,7 +104,7 @@ def test_one_measure_in_between_tells_the_period_from_its_double() -> None:
     elements, epoch = once_in_ten_years()
     epoch = np.sort(np.append(epoch, [1984.7, 1996.2]))
     solution = solve(observed(elements, epoch, 0.02, np.random.default_rng(2)))
-    assert solution.elements.P == pytest.approx(10.0, abs=0.02)
+    assert abs(solution.elements.P - 10.0) < 0.02
     assert "rival-orbits" not in [notice.code for notice in solution.warnings]
 
 
@@ -115,4 +115,5 @@ def test_many_measures_are_followed_on_few_and_settled_on_all() -> None:
     observations = observe(observed(elements, epoch, 0.1, rng).measures)
     t0, orbits = find_basins(observations)
     assert orbits.chi2[0] <= chi2_from_the_truth(elements, observations, t0) + 1e-6
-    assert elements_from_regular(orbits.u[0], t0).P == pytest.approx(31.0, abs=0.1)
+    found = elements_from_regular(orbits.u[0], t0)
+    assert abs(found.P - 31.0) < 0.1

@@ -109,7 +109,7 @@ def test_a_passage_some_revolutions_away_can_be_held(
     solution = solve(pair, hold=hold)
     # one standard deviation off, so chi2 rises by one
     assert solution.chi2 - free.chi2 == pytest.approx(1.0, abs=0.15)
-    assert solution.elements.T == hold["T"]
+    assert solution.elements.to_dict()["T"] == hold["T"]
     assert solution.chi2 == pytest.approx(best_by_scipy(pair, hold, away.elements), abs=1e-4)
 
 
@@ -147,8 +147,8 @@ def test_a_circle_has_two_unknowns_less(circle: Pair) -> None:
     assert solution.elements.e == 0.0
     assert solution.elements.omega == 0.0
     assert solution.sigma["T"] is None and solution.sigma["omega"] is None
-    assert solution.elements.P == pytest.approx(40.0, abs=5.0 * solution.sigma["P"])
-    assert solution.elements.T == pytest.approx(2000.0, abs=0.5)
+    assert abs(solution.elements.P - 40.0) < 5.0 * solution.sigma["P"]
+    assert abs(solution.elements.T - 2000.0) < 0.5
     hold = {"e": 0.0, "omega": 0.0}
     assert solution.chi2 == pytest.approx(best_by_scipy(circle, hold, CIRCLE), abs=1e-4)
 

@@ -27,7 +27,8 @@ T0 = 1990.0
 def problems() -> dict[str, Problem]:
     epoch = np.linspace(1960.0, 2020.0, 50)
     observations = observe(observed(TRUE, epoch, 0.03, np.random.default_rng(5)).measures)
-    return {"polar": polar_problem(observations, T0), "sky": sky_problem(sky_data(observations), T0)}
+    sky = sky_problem(sky_data(observations), T0)
+    return {"polar": polar_problem(observations, T0), "sky": sky}
 
 
 PROBLEMS = problems()

@@ -77,13 +77,13 @@ def test_an_epoch_range_leaves_the_rest_out(pair: Pair) -> None:
     m = pair.measures.select(inside)
     alone = solve(Pair.from_arrays(m.epoch, m.theta, m.rho, m.theta_err, m.rho_err))
     assert alone.chi2 == pytest.approx(solution.chi2, rel=1e-9)
-    assert alone.elements.P == pytest.approx(solution.elements.P, rel=1e-9)
+    assert abs(alone.elements.P / solution.elements.P - 1.0) < 1e-9
 
 
 def test_a_period_range_around_the_period_changes_nothing(pair: Pair, free: Solution) -> None:
     solution = solve(pair, period_range=(8.0, 20.0))
     assert solution.chi2 == pytest.approx(free.chi2, abs=1e-6)
-    assert solution.elements.P == pytest.approx(free.elements.P, rel=1e-7)
+    assert abs(solution.elements.P / free.elements.P - 1.0) < 1e-7
 
 
 def test_a_period_shorter_than_the_search_looks_at_can_be_asked_for() -> None:
@@ -93,7 +93,7 @@ def test_a_period_shorter_than_the_search_looks_at_can_be_asked_for() -> None:
     epoch = np.sort(rng.uniform(2000.0, 2010.0, 60))
     pair = observed(elements, epoch, 0.002, rng)
     solution = solve(pair, period_range=(0.05, 0.1))
-    assert solution.elements.P == pytest.approx(0.0667, abs=1e-4)
+    assert abs(solution.elements.P - 0.0667) < 1e-4
     assert solution.reduced_chi2 < 1.6
 
 
@@ -114,7 +114,7 @@ def test_quantities_and_times_are_taken() -> None:
         m.theta_err * 60.0 * units.arcmin, m.rho_err / 60.0 * units.arcmin,
     ))  # fmt: skip
     assert other.chi2 == pytest.approx(plain.chi2, rel=1e-6)
-    assert other.elements.P == pytest.approx(plain.elements.P, rel=1e-7)
+    assert abs(other.elements.P / plain.elements.P - 1.0) < 1e-7
 
 
 def test_theta_that_is_not_at_j2000_is_warned_about(pair: Pair, free: Solution) -> None:
@@ -140,7 +140,7 @@ def test_scaling_the_sky_scales_the_axis_alone(pair: Pair, free: Solution) -> No
     m = pair.measures
     large = solve(Pair.from_arrays(EPOCH, m.theta, 10.0 * m.rho, m.theta_err, 10.0 * m.rho_err))
     assert large.elements.a == pytest.approx(10.0 * free.elements.a, rel=1e-6)
-    assert large.elements.P == pytest.approx(free.elements.P, rel=1e-6)
+    assert abs(large.elements.P / free.elements.P - 1.0) < 1e-6
     assert large.chi2 == pytest.approx(free.chi2, rel=1e-6)
 
 
@@ -159,4 +159,5 @@ def test_turning_the_sky_turns_the_node_alone(pair: Pair, free: Solution) -> Non
     other = solve(Pair.from_arrays(EPOCH, theta, m.rho, m.theta_err, m.rho_err))
     assert other.elements.node == pytest.approx(free.elements.node + 40.0, abs=1e-4)
     for name in ("P", "T", "e", "a", "i", "omega"):
-        assert getattr(other.elements, name) == pytest.approx(getattr(free.elements, name), rel=1e-6)
+        before = getattr(free.elements, name)
+        assert getattr(other.elements, name) == pytest.approx(before, rel=1e-6)

@@ -1,0 +1,210 @@
+"""What follows from the orbit: other orbits compared, mass, ephemeris, turning points, notes."""
+
+from __future__ import annotations
+
+import tkinter as tk
+from collections.abc import Callable
+from tkinter import ttk
+
+from relorbit.cli.main import CAUTION
+from relorbit.derive.ephemeris import turning_points
+from relorbit.derive.mass import mass_budget
+from relorbit.desk.commands import CommandSet
+from relorbit.desk.model import ORBIT, PAIR, DeskModel
+from relorbit.desk.orbits_list import OrbitsList
+from relorbit.desk.theme import Palette, Sizes
+from relorbit.desk.words import words_of
+from relorbit.errors import InputError
+from relorbit.show.text import (
+    mass_budget_text,
+    technique_table,
+    turning_points_table,
+    warnings_text,
+)
+from relorbit.solve.solution import Solution
+
+PATIENCE = 150  # milliseconds without a change before the longer texts are written anew
+NO_ORBIT = "Nothing follows yet: there is no orbit. Press Solve."
+PROVISIONAL = "Orbits from short arcs are provisional."
+SUN = CAUTION.split("\n", 1)[0].partition(". ")[2] + " " + CAUTION.split("\n", 1)[1]
+
+
+class FollowsView(ttk.Frame):
+    """Tabs of what follows; only the one that is seen is kept up to date."""
+
+    def __init__(
+        self,
+        parent: tk.Misc,
+        model: DeskModel,
+        commands: CommandSet,
+        ephemeris_text: Callable[[str, str, str], str],
+        year: float,
+    ) -> None:
+        super().__init__(parent)
+        self.model = model
+        self._pending: str | None = None
+        self._year = year
+        self.tabs = ttk.Notebook(self)
+        self.tabs.pack(fill="both", expand=True)
+        self.orbits = OrbitsList(self.tabs, model, commands)
+        self.mass = TextPage(self.tabs)
+        self.ephemeris = EphemerisPage(self.tabs, commands, ephemeris_text, year)
+        self.notes = TextPage(self.tabs, wrap="word")
+        for page, title in (
+            (self.orbits, "Orbits"), (self.mass, "Mass, turning points"),
+            (self.ephemeris, "Ephemeris"), (self.notes, "Notes"),
+        ):  # fmt: skip
+            self.tabs.add(page, text=title)
+        self.tabs.bind("<<NotebookTabChanged>>", lambda _: self.write())
+        self.bind("<Destroy>", lambda _: self._forget_pending(), add=True)
+
+    def on_change(self, kinds: frozenset[str]) -> None:
+        if kinds & {PAIR, ORBIT}:
+            self._forget_pending()
+            self._pending = self.after(PATIENCE, self.write)
+
+    def _forget_pending(self) -> None:
+        if self._pending is not None:
+            self.after_cancel(self._pending)
+            self._pending = None
+
+    def wear(self, palette: Palette) -> None:
+        for page in (self.mass, self.notes, self.ephemeris.page):
+            page.wear(palette)
+        self.orbits.wear(palette)
+
+    def write(self) -> None:
+        """Write the page that is seen."""
+        self._forget_pending()
+        seen = self.tabs.nametowidget(self.tabs.select())
+        if seen is self.orbits:
+            self.orbits.write()
+        elif seen is self.mass:
+            self.mass.write(self._mass_text())
+        elif seen is self.ephemeris:
+            self.ephemeris.write(self.model.elements is not None)
+        else:
+            self.notes.write(self._notes_text())
+
+    def _mass_text(self) -> str:
+        model = self.model
+        orbit, parallax = model.orbit, model.pair.parallax_mas
+        if orbit is None:
+            return NO_ORBIT
+        points = turning_points_table(turning_points(orbit, self._year))
+        if parallax is None or parallax <= 0.0:
+            mass = "total mass  not known: the pair has no parallax (Edit, About the pair)"
+        else:
+            mass = mass_budget_text(mass_budget(orbit, parallax, model.pair.parallax_err_mas))
+        return f"{points}\n\n{mass}"
+
+    def _notes_text(self) -> str:
+        model = self.model
+        orbit, following = model.orbit, model.consequences
+        if orbit is None or following is None:
+            return NO_ORBIT
+        parts = []
+        if isinstance(orbit, Solution):
+            parts.append(warnings_text(orbit.warnings) or "Nothing to warn of.")
+        else:
+            parts.append(
+                "Warnings come with a fit: this orbit was typed, nudged or taken from the record."
+            )
+        parts += [PROVISIONAL, technique_table(following.residuals)]
+        return "\n\n".join(part for part in parts if part)
+
+
+class TextPage(ttk.Frame):
+    """Text to read and copy, not to change."""
+
+    def __init__(self, parent: tk.Misc, wrap: str = "none") -> None:
+        super().__init__(parent)
+        sizes = Sizes(self)
+        self.text = tk.Text(
+            self, wrap=wrap, font="TkFixedFont", width=20, height=4, borderwidth=0,
+            highlightthickness=0, padx=sizes(8), pady=sizes(6), state="disabled", cursor="arrow",
+        )  # fmt: skip
+        down = ttk.Scrollbar(self, orient="vertical", command=self.text.yview)
+        across = ttk.Scrollbar(self, orient="horizontal", command=self.text.xview)
+        self.text.configure(yscrollcommand=down.set, xscrollcommand=across.set)
+        self.text.grid(row=0, column=0, sticky="nsew")
+        down.grid(row=0, column=1, sticky="ns")
+        if wrap == "none":
+            across.grid(row=1, column=0, sticky="ew")
+        self.rowconfigure(0, weight=1)
+        self.columnconfigure(0, weight=1)
+        self.text.bind("<Button-1>", lambda _: self.text.focus_set())
+
+    def write(self, words: str) -> None:
+        if self.content != words:
+            self.text.configure(state="normal")
+            self.text.replace("1.0", "end", words)
+            self.text.configure(state="disabled")
+
+    @property
+    def content(self) -> str:
+        return self.text.get("1.0", "end-1c")
+
+    def wear(self, palette: Palette) -> None:
+        self.text.configure(
+            background=palette.paper, foreground=palette.ink, insertbackground=palette.ink,
+            selectbackground=palette.accent, selectforeground=palette.on_accent,
+        )  # fmt: skip
+
+
+class EphemerisPage(ttk.Frame):
+    """Positions at chosen dates."""
+
+    def __init__(
+        self,
+        parent: tk.Misc,
+        commands: CommandSet,
+        text_of: Callable[[str, str, str], str],
+        year: float,
+    ) -> None:
+        super().__init__(parent)
+        sizes = Sizes(self)
+        self._text_of = text_of
+        line = ttk.Frame(self)
+        line.pack(fill="x", padx=sizes(6), pady=sizes(4))
+        first = int(year) + 1
+        self.fields: dict[str, ttk.Entry] = {}
+        for name, value, width in (("from", first, 10), ("to", first + 10, 10),
+                                   ("step", "1 year", 9)):  # fmt: skip
+            ttk.Label(line, text=name).pack(side="left", padx=(0, sizes(3)))
+            field = ttk.Entry(line, width=width)
+            field.insert(0, str(value))
+            field.pack(side="left", padx=(0, sizes(8)))
+            field.bind("<KeyRelease>", lambda _: self.write(self._there))
+            self.fields[name] = field
+        for name in ("copy_ephemeris", "save_ephemeris"):
+            commands.button(line, name).pack(side="left", padx=(0, sizes(4)))
+        self._there = False
+        self.wrong = ttk.Label(self, style="Warn.TLabel", wraplength=sizes(420))
+        caution = ttk.Label(self, text=SUN.replace("\n", " "), style="Small.TLabel",
+                            wraplength=sizes(420), justify="left")  # fmt: skip
+        caution.pack(side="bottom", fill="x", padx=sizes(6), pady=sizes(3))
+        self.page = TextPage(self)
+        self.page.pack(fill="both", expand=True)
+        self.bind("<Configure>", lambda event: [
+            label.configure(wraplength=max(event.width - sizes(12), 100))
+            for label in (caution, self.wrong)])  # fmt: skip
+
+    @property
+    def asked(self) -> tuple[str, str, str]:
+        """First, last and step as typed."""
+        return tuple(self.fields[name].get() for name in ("from", "to", "step"))
+
+    def write(self, there: bool) -> None:
+        """Compute and show, or say what is wrong with what was asked."""
+        self._there = there
+        self.wrong.pack_forget()
+        if not there:
+            self.page.write(NO_ORBIT)
+            return
+        try:
+            self.page.write(self._text_of(*self.asked))
+        except InputError as error:
+            self.wrong.configure(text=words_of(error))
+            self.wrong.pack(fill="x", before=self.page, padx=6)
+            self.page.write("")
