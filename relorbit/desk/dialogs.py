@@ -27,7 +27,8 @@ class Dialog(tk.Toplevel):
     """A window over the desk that waits for an answer; Escape is the last button."""
 
     def __init__(self, parent: tk.Misc, palette: Palette, title: str) -> None:
-        super().__init__(parent, background=palette.ground)
+        super().__init__(parent, background=palette.ground, highlightthickness=1,
+                         highlightbackground=palette.line, highlightcolor=palette.line)  # fmt: skip
         self.withdraw()
         self.title(title)
         self.transient(parent.winfo_toplevel())

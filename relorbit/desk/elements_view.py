@@ -10,7 +10,7 @@ from relorbit.derive.consequences import nudged
 from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import ORBIT, PAIR, DeskModel
 from relorbit.desk.theme import Palette, Sizes
-from relorbit.desk.words import LETTERS, UNITS
+from relorbit.desk.words import LETTERS, UNITS, chi2_in_words
 from relorbit.measures.pair import RecordedOrbit
 from relorbit.orbit.elements import NAMES, Elements
 from relorbit.show.numbers import fixed, known, significant
@@ -137,7 +137,7 @@ class ElementsView(ttk.Frame):
                 text="Solve finds the orbit without a starting guess. Or type all seven elements."
             )
             return
-        self.chi2.configure(text=f"\u03c7\u00b2 {fixed(following.chi2, 1)}")
+        self.chi2.configure(text=f"\u03c7\u00b2 {chi2_in_words(following.chi2)}")
         self.fit.configure(text=f"for {following.numbers} values in use")
         self._show_mass(following.mass, orbit)
         self.word.configure(text=self._standing(orbit))

@@ -13,13 +13,12 @@ from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import ORBIT, PAIR, DeskModel
 from relorbit.desk.orbits_list import OrbitsList
 from relorbit.desk.theme import Palette, Sizes
-from relorbit.desk.words import words_of
+from relorbit.desk.words import sentence, words_of
 from relorbit.errors import InputError
 from relorbit.show.text import (
     mass_budget_text,
     technique_table,
     turning_points_table,
-    warnings_text,
 )
 from relorbit.solve.solution import Solution
 
@@ -49,7 +48,7 @@ class FollowsView(ttk.Frame):
         self.orbits = OrbitsList(self.tabs, model, commands)
         self.mass = TextPage(self.tabs)
         self.ephemeris = EphemerisPage(self.tabs, commands, ephemeris_text, year)
-        self.notes = TextPage(self.tabs, wrap="word")
+        self.notes = TextPage(self.tabs, words=True)
         for page, title in (
             (self.orbits, "Orbits"), (self.mass, "Mass, turning points"),
             (self.ephemeris, "Ephemeris"), (self.notes, "Notes"),
@@ -84,7 +83,7 @@ class FollowsView(ttk.Frame):
         elif seen is self.ephemeris:
             self.ephemeris.write(self.model.elements is not None)
         else:
-            self.notes.write(self._notes_text())
+            self.notes.write(self._notes_text(), self._notes_table())
 
     def _mass_text(self) -> str:
         model = self.model
@@ -103,25 +102,27 @@ class FollowsView(ttk.Frame):
         orbit, following = model.orbit, model.consequences
         if orbit is None or following is None:
             return NO_ORBIT
-        parts = []
         if isinstance(orbit, Solution):
-            parts.append(warnings_text(orbit.warnings) or "Nothing to warn of.")
+            parts = [sentence(one.text) for one in orbit.warnings] or ["Nothing to warn of."]
         else:
-            parts.append(
-                "Warnings come with a fit: this orbit was typed, nudged or taken from the record."
-            )
-        parts += [PROVISIONAL, technique_table(following.residuals)]
-        return "\n\n".join(part for part in parts if part)
+            parts = ["Warnings come with a fit: this orbit was typed, nudged or taken from the "
+                     "record."]  # fmt: skip
+        return "\n\n".join([*parts, PROVISIONAL])
+
+    def _notes_table(self) -> str:
+        following = self.model.consequences
+        return "" if following is None else technique_table(following.residuals)
 
 
 class TextPage(ttk.Frame):
-    """Text to read and copy, not to change."""
+    """Text to read and copy, not to change: a table, or words with a table below."""
 
-    def __init__(self, parent: tk.Misc, wrap: str = "none") -> None:
+    def __init__(self, parent: tk.Misc, words: bool = False) -> None:
         super().__init__(parent)
         sizes = Sizes(self)
         self.text = tk.Text(
-            self, wrap=wrap, font="TkFixedFont", width=20, height=4, borderwidth=0,
+            self, wrap="word" if words else "none", width=20,
+            font="TkTextFont" if words else "TkFixedFont", height=4, borderwidth=0,
             highlightthickness=0, padx=sizes(8), pady=sizes(6), state="disabled", cursor="arrow",
         )  # fmt: skip
         down = ttk.Scrollbar(self, orient="vertical", command=self.text.yview)
@@ -129,16 +130,19 @@ class TextPage(ttk.Frame):
         self.text.configure(yscrollcommand=down.set, xscrollcommand=across.set)
         self.text.grid(row=0, column=0, sticky="nsew")
         down.grid(row=0, column=1, sticky="ns")
-        if wrap == "none":
-            across.grid(row=1, column=0, sticky="ew")
+        across.grid(row=1, column=0, sticky="ew")
+        self.text.tag_configure("table", font="TkFixedFont", wrap="none")
         self.rowconfigure(0, weight=1)
         self.columnconfigure(0, weight=1)
         self.text.bind("<Button-1>", lambda _: self.text.focus_set())
 
-    def write(self, words: str) -> None:
-        if self.content != words:
+    def write(self, words: str, table: str = "") -> None:
+        whole = f"{words}\n\n{table}" if table else words
+        if self.content != whole:
             self.text.configure(state="normal")
             self.text.replace("1.0", "end", words)
+            if table:
+                self.text.insert("end", f"\n\n{table}", "table")
             self.text.configure(state="disabled")
 
     @property

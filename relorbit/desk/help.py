@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import tkinter as tk
 from collections.abc import Iterable
+from itertools import pairwise
 from tkinter import ttk
 
 from relorbit.cli.main import CAUTION
 from relorbit.desk.commands import MENUS, Command
 from relorbit.desk.dialogs import Dialog
-from relorbit.desk.theme import Palette
+from relorbit.desk.theme import Palette, Sizes
 
+COLUMNS = 3
 BEGIN = """Open a pair and press Solve: every orbit that fits is found, without a starting guess.
 Then look at the residuals. Point at a measure to read it, click to select it: it is marked in the
 table, on the sky and in the strips alike. W goes to the measure that is farthest off. F turns its
@@ -38,14 +40,8 @@ def key_list(commands: Iterable[Command]) -> list[tuple[str, str, str]]:
             for one in commands if one.menu == menu and one.key]  # fmt: skip
 
 
-def show_help(parent: tk.Misc, palette: Palette, commands: Iterable[Command]) -> None:
-    """Open the help window and wait until it is closed."""
-    dialog = Dialog(parent, palette, "Help")
-    sizes = dialog.sizes
-    ttk.Label(dialog.inner, text=BEGIN.replace("\n", " "), wraplength=sizes(760),
-              justify="left").pack(anchor="w")  # fmt: skip
-    grid = ttk.Frame(dialog.inner)
-    grid.pack(fill="both", expand=True, pady=sizes(8))
+def help_lines(commands: Iterable[Command]) -> list[tuple[str, str]]:
+    """Key and what it does, line by line; a line without a key is a title."""
     lines: list[tuple[str, str]] = []
     last = ""
     for menu, key, label in key_list(commands):
@@ -53,21 +49,38 @@ def show_help(parent: tk.Misc, palette: Palette, commands: Iterable[Command]) ->
             lines.append(("", menu))
         last = menu
         lines.append((key, label))
-    lines += [("", "With the mouse"), *MOUSE, ("", "In fields and tables"), *CELLS]
-    half = -(-len(lines) // 2)
-    for at, (key, label) in enumerate(lines):
-        row, column = at % half, 2 * (at // half)
+    return [*lines, ("", "With the mouse"), *MOUSE, ("", "In fields and tables"), *CELLS]
+
+
+def _put_lines(parent: tk.Misc, lines: Iterable[tuple[str, str]], sizes: Sizes) -> None:
+    for row, (key, label) in enumerate(lines):
         if not key:
-            ttk.Label(grid, text=label, style="Bold.TLabel").grid(
-                row=row, column=column, columnspan=2, sticky="w", pady=(sizes(3), 0),
-                padx=(sizes(24) if column else 0, 0),
-            )  # fmt: skip
+            title = ttk.Label(parent, text=label, style="Bold.TLabel")
+            title.grid(row=row, column=0, columnspan=2, sticky="w", pady=(sizes(5), 0))
             continue
-        ttk.Label(grid, text=key).grid(row=row, column=column, sticky="nw",
-                                       padx=(sizes(24) if column else 0, sizes(10)))  # fmt: skip
-        ttk.Label(grid, text=label, style="Quiet.TLabel", wraplength=sizes(330),
-                  justify="left").grid(row=row, column=column + 1, sticky="w")  # fmt: skip
+        ttk.Label(parent, text=key).grid(row=row, column=0, sticky="nw", padx=(0, sizes(10)))
+        ttk.Label(parent, text=label, style="Quiet.TLabel", wraplength=sizes(205),
+                  justify="left").grid(row=row, column=1, sticky="w")  # fmt: skip
+
+
+def show_help(parent: tk.Misc, palette: Palette, commands: Iterable[Command]) -> None:
+    """Open the help window and wait until it is closed."""
+    dialog = Dialog(parent, palette, "Help")
+    sizes = dialog.sizes
+    ttk.Label(dialog.inner, text=BEGIN.replace("\n", " "), wraplength=sizes(880),
+              justify="left").pack(anchor="w")  # fmt: skip
+    grid = ttk.Frame(dialog.inner)
+    grid.pack(fill="both", expand=True, pady=sizes(8))
+    lines = help_lines(commands)
+    titles = [at for at, (key, _) in enumerate(lines) if not key]
+    cuts = [min(titles, key=lambda at, k=k: abs(COLUMNS * at - k * len(lines)))
+            for k in range(1, COLUMNS)]  # fmt: skip
+    for first, last in pairwise([0, *cuts, len(lines)]):
+        part = lines[first:last]
+        column = ttk.Frame(grid)
+        column.pack(side="left", anchor="n", padx=(0, sizes(14)))
+        _put_lines(column, part, sizes)
     ttk.Label(dialog.inner, text=CAUTION.replace("\n", " "), style="Quiet.TLabel",
-              wraplength=sizes(760), justify="left").pack(anchor="w")  # fmt: skip
+              wraplength=sizes(880), justify="left").pack(anchor="w")  # fmt: skip
     dialog.buttons(("Close",), dialog.press)
     dialog.wait()

@@ -55,6 +55,12 @@ def group_line(
     return line
 
 
+def key_mark(technique: str, palette: Palette) -> Line2D:
+    """A legend entry."""
+    style = {**mark_style(technique, True, 5.5), "markeredgecolor": palette.edges[technique]}
+    return Line2D([], [], label=technique, **style)
+
+
 def draw_groups(axes: Axes, marks: Shown, x: FloatArray, y: FloatArray, palette: Palette) -> None:
     """A marker for every measure."""
     for technique, used in groups(marks):

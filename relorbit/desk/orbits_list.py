@@ -9,6 +9,7 @@ from relorbit.derive.glance import Compared, compared
 from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import DeskModel
 from relorbit.desk.theme import Palette, Sizes
+from relorbit.desk.words import chi2_in_words
 from relorbit.orbit.elements import Elements
 from relorbit.show.numbers import fixed, significant
 
@@ -102,6 +103,5 @@ def _title(key: tuple[str, object]) -> str:
 
 def _cells(one: Compared) -> list[str]:
     orbit = one.elements
-    rise = fixed(one.rise, 1, sign=True)
-    return [significant(orbit.P, 4), fixed(orbit.e, 3), significant(orbit.a, 4),
-            fixed(one.chi2, 1), rise]  # fmt: skip
+    return [significant(orbit.P, 4), fixed(orbit.e, 4), significant(orbit.a, 4),
+            chi2_in_words(one.chi2), chi2_in_words(one.rise, sign=True)]  # fmt: skip

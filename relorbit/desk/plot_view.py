@@ -1,14 +1,15 @@
 """A figure in the window: still parts drawn once, moving parts laid over them at little cost.
 
-What changes while an element is nudged (the curve, hairlines, residuals, the selection) is drawn
-over a kept picture of the rest. Pointing, selecting, zooming and panning are the same in every
+What changes while an element is nudged (the curve, hairlines, residuals) is drawn over a kept
+picture of the rest; what changes more often still (the selection, the date) over a kept picture
+of that. Pointing, selecting, zooming and panning are the same in every
 figure of the window.
 """
 
 from __future__ import annotations
 
 import tkinter as tk
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from tkinter import ttk
 from typing import Any
@@ -22,7 +23,7 @@ from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from numpy.typing import NDArray
 
-from relorbit.desk.model import PAIR, SELECTION, DeskModel
+from relorbit.desk.model import ORBIT, PAIR, SELECTION, VIEW, DeskModel
 from relorbit.desk.theme import Palette, Sizes
 from relorbit.desk.words import measure_in_words
 
@@ -57,10 +58,12 @@ class PlotView(ttk.Frame):
         super().__init__(parent)
         self.model, self.palette, self.sizes = model, palette, Sizes(self)
         self.moving: list[Artist] = []
+        self.light: list[Artist] = []
         self.spots: dict[Axes, NDArray] = {}
         self.framed = True  # limits follow the orbit until the observer zooms
         self._on_menu = on_menu
-        self._kept: Any = None
+        self._kept: Any = None  # the still parts
+        self._under: Any = None  # the still and the moving parts
         self._pending: str | None = None
         self._pause: str | None = None
         self._rebuild = True
@@ -95,7 +98,11 @@ class PlotView(ttk.Frame):
         raise NotImplementedError
 
     def feed(self) -> None:
-        """Give the moving artists what the model says now."""
+        """Give the moving artists, and the light ones, what the model says now."""
+        raise NotImplementedError
+
+    def feed_light(self) -> None:
+        """Give the light artists what the model says now."""
         raise NotImplementedError
 
     # -- drawing -------------------------------------------------------------------------------
@@ -115,25 +122,29 @@ class PlotView(ttk.Frame):
             self.feed()
         self.canvas.draw()
 
-    def repaint(self) -> None:
-        """Draw the moving parts over the kept picture of the others."""
+    def repaint(self, light_only: bool = False) -> None:
+        """Draw the moving parts, or only the light ones, over the kept picture of the others."""
         if self._pending is not None:
             return
         if self._kept is None:
             self.redraw(rebuild=False)
-            return
-        self.canvas.restore_region(self._kept)
-        self._draw_moving()
-        self.canvas.blit()
+        elif light_only:
+            self.canvas.restore_region(self._under)
+            _draw(self.light)
+            self.canvas.blit()
+        else:
+            self.canvas.restore_region(self._kept)
+            self._draw_over()
+            self.canvas.blit()
 
-    def _draw_moving(self) -> None:
-        for artist in sorted(self.moving, key=lambda one: one.get_zorder()):
-            if not (isinstance(artist, Line2D) and not len(artist.get_xdata())):
-                artist.axes.draw_artist(artist)
+    def _draw_over(self) -> None:
+        _draw(self.moving)
+        self._under = self.canvas.copy_from_bbox(self.figure.bbox)
+        _draw(self.light)
 
     def _on_draw(self, event: DrawEvent) -> None:
         self._kept = self.canvas.copy_from_bbox(self.figure.bbox)
-        self._draw_moving()
+        self._draw_over()
 
     def _on_resize(self, event: object) -> None:
         self._kept = None
@@ -308,13 +319,29 @@ class PlotView(ttk.Frame):
 
     # -- the model -----------------------------------------------------------------------------
 
+    def outdated(self, kinds: frozenset[str]) -> bool:
+        """Whether a change asks for new artists."""
+        raise NotImplementedError
+
     def on_change(self, kinds: frozenset[str]) -> None:
-        """Follow the model."""
-        if PAIR in kinds:
+        """Follow the model, in the cheapest way that will do."""
+        if PAIR in kinds or self.outdated(kinds):
             self.redraw()
-        elif kinds == {SELECTION}:
+        elif self._kept is None or self._rebuild:
+            return  # all of it is drawn soon
+        elif ORBIT in kinds:
             self.feed()
             self.repaint()
+        elif kinds & {SELECTION, VIEW}:
+            self.feed_light()
+            self.repaint(light_only=True)
+
+
+def _draw(artists: Iterable[Artist]) -> None:
+    """Draw artists of a figure, the lowest first, without those that hold nothing."""
+    for artist in sorted(artists, key=lambda one: one.get_zorder()):
+        if not (isinstance(artist, Line2D) and not len(artist.get_xdata())):
+            artist.axes.draw_artist(artist)
 
 
 def broken(start: NDArray, end: NDArray) -> NDArray:

@@ -15,14 +15,14 @@ from relorbit.derive.ephemeris import ephemeris
 from relorbit.derive.epochs import epoch_from_text
 from relorbit.derive.glance import range_of_dates
 from relorbit.desk.marks import Shown, draw_groups, shown
-from relorbit.desk.model import ORBIT, PAIR, SELECTION, VIEW, DeskModel
+from relorbit.desk.model import ORBIT, PAIR, VIEW, DeskModel
 from relorbit.desk.plot_view import PlotView, broken
 from relorbit.desk.theme import Palette, recolour
 from relorbit.desk.words import position_in_words, words_of
 from relorbit.errors import InputError
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import TWO_PI
-from relorbit.show.colours import CURVE_WIDTH, hairline
+from relorbit.show.colours import CURVE_WIDTH, SMALL, hairline
 from relorbit.show.marks import quiet
 from relorbit.show.numbers import fixed
 from relorbit.show.orbit_plot import (
@@ -84,9 +84,10 @@ class SkyView(PlotView):
             draw_other_orbit(axes, elements, label, slot)
         draw_groups(axes, marks, *sky(marks.theta, marks.rho), self.palette)
         if others:
-            legend = axes.legend(loc="best", frameon=False, fontsize="x-small")
-            for text in legend.get_texts():
-                text.set_color(self.palette.ink)
+            right, upper = self._view.corners[2]
+            where = f"{'upper' if upper else 'lower'} {'right' if right else 'left'}"
+            axes.legend(loc=where, frameon=False, fontsize=SMALL,
+                        labelcolor=self.palette.ink)  # fmt: skip
         self._put_corners()
         recolour(axes, self.palette)
         self._build_moving()
@@ -155,8 +156,8 @@ class SkyView(PlotView):
                                markeredgecolor=p.paper, linestyle="none")  # fmt: skip
         self._periastron = line(marker="D", markersize=4, color=p.ink, linestyle="none", zorder=3)
         self._ring = self.ring(axes)
-        self._still_moving = [self._hairs, self._curve, self._radius, self._companion,
-                              self._periastron, self._ring]  # fmt: skip
+        self._lines = [self._hairs, self._curve, self._periastron]
+        self.light = [self._radius, self._companion, self._ring]
 
     def feed(self) -> None:
         following, elements = self.model.consequences, self.model.elements
@@ -172,9 +173,12 @@ class SkyView(PlotView):
         else:
             self._curve.set_data([], [])
             self._hairs.set_data([], [])
+        self.moving = [*self._lines, *self._decor]
+        self.feed_light()
+
+    def feed_light(self) -> None:
         self._feed_companion()
         self.feed_ring(self._ring)
-        self.moving = [*self._still_moving, *self._decor]
 
     def _follow_decor(self) -> None:
         """What stands on the curve is taken away while one nudges, and put back in a pause."""
@@ -197,7 +201,7 @@ class SkyView(PlotView):
         self._pause = None
         if self.model.elements is not None and not self._rebuild:
             self._put_decor(self.model.elements)
-            self.moving = [*self._still_moving, *self._decor]
+            self.moving = [*self._lines, *self._decor]
             self.repaint()
 
     def _put_decor(self, elements: Elements) -> None:
@@ -230,13 +234,11 @@ class SkyView(PlotView):
 
     def on_change(self, kinds: frozenset[str]) -> None:
         self.dates.on_change(kinds)
+        super().on_change(kinds)
+
+    def outdated(self, kinds: frozenset[str]) -> bool:
         turned = VIEW in kinds and self._orientation != self.model.orientation
-        moved = ORBIT in kinds and self.framed and not self.model.nudging
-        if PAIR in kinds or turned or moved:
-            self.redraw()
-        elif kinds & {ORBIT, SELECTION, VIEW} and self._kept is not None and not self._rebuild:
-            self.feed()
-            self.repaint()
+        return turned or (ORBIT in kinds and self.framed and not self.model.nudging)
 
     def set_limits(
         self, axes: Axes, x: tuple[float, float], y: tuple[float, float], keys: int

@@ -12,18 +12,20 @@ from matplotlib.markers import CARETDOWN, CARETUP
 from matplotlib.ticker import MaxNLocator
 
 from relorbit.derive.glance import phase
-from relorbit.desk.marks import group_line
-from relorbit.desk.model import ORBIT, PAIR, SELECTION, VIEW, DeskModel
+from relorbit.desk.marks import group_line, key_mark
+from relorbit.desk.model import ORBIT, VIEW, DeskModel
 from relorbit.desk.plot_view import SHIFT, PlotView, broken
 from relorbit.desk.theme import Palette, recolour
+from relorbit.measures.table import TECHNIQUES
 from relorbit.orbit.kepler import FloatArray
-from relorbit.show.colours import INK, THIN, hairline
+from relorbit.show.colours import INK, SMALL, THIN, hairline
 from relorbit.show.marks import groups, label_axes, quiet
 from relorbit.show.residual_plot import panel_limit, residual_unit
 from relorbit.solve.residuals import Residuals
 
-INSETS = (54.0, 10.0, 32.0, 8.0, 8.0)  # left, right, bottom, top, between: pixels at 96 an inch
+INSETS = (56.0, 10.0, 32.0, 26.0, 8.0)  # left, right, bottom, top, between: pixels at 96 an inch
 EDGE = 0.95  # of half the height: where a residual beyond the scale is marked
+MOST_BARS = 3000  # of more measures the error bars would be one solid band
 SLACK = (0.45, 1.25)  # the scale follows when what it must hold is smaller or larger than this
 
 
@@ -38,7 +40,8 @@ class StripsView(PlotView):
         self.across: Axes = self.figure.add_axes((0.1, 0.5, 0.8, 0.4))
         self._panels = (self.across, self.along)
         self._by_phase = model.by_phase
-        self._lines: dict[Axes, dict[tuple[str, bool], Line2D]] = {}
+        self._lines: dict[Axes, dict[tuple[str | int, bool], Line2D]] = {}
+        self._over: dict[Axes, tuple[Line2D, Line2D]] = {}
         self._half = {panel: 1.0 for panel in self._panels}
         self._x = (0.0, 1.0)
         self._empty = tk.Label(self.widget, font="TkDefaultFont", justify="center",
@@ -52,8 +55,10 @@ class StripsView(PlotView):
         kept = None if self.framed or self._by_phase != self.model.by_phase else (
             self.along.get_xlim(), [panel.get_ylim() for panel in self._panels])  # fmt: skip
         self._by_phase = self.model.by_phase
-        self.moving, self.spots, self._lines = [], {}, {}
+        self.moving, self.light, self.spots, self._lines, self._over = [], [], {}, {}, {}
         self._put_axes()
+        for legend in list(self.figure.legends):
+            legend.remove()
         self._empty.configure(background=self.palette.ground, foreground=self.palette.quiet)
         for panel in self._panels:
             panel.clear()
@@ -66,12 +71,24 @@ class StripsView(PlotView):
         self._unit = residual_unit(following.residuals)
         for panel, name in zip(self._panels, ("across", "along"), strict=True):
             self._build_panel(panel, name, following.residuals)
+        self._put_key(following.residuals)
         self._set_time(kept and kept[0])
         if kept:
             for panel, limits in zip(self._panels, kept[1], strict=True):
                 panel.set_ylim(limits)
         self.across.tick_params(labelbottom=False)
         self.across.set_xlabel("")
+
+    def _put_key(self, of: Residuals) -> None:
+        """Which marker is which technique, over the strips."""
+        handles = [key_mark(technique, self.palette) for technique in TECHNIQUES
+                   if np.any(of.technique == technique)]  # fmt: skip
+        legend = self.figure.legend(
+            handles=handles, loc="upper left", ncols=len(handles), frameon=False, fontsize=SMALL,
+            bbox_to_anchor=(self.across.get_position().x0, 1.0), labelcolor=self.palette.ink,
+            handletextpad=0.2, columnspacing=1.2, borderaxespad=0.35, borderpad=0.3,
+        )  # fmt: skip
+        legend.set_in_layout(False)
 
     def _put_axes(self) -> None:
         left, right, bottom, top, between = (self.sizes(length) for length in INSETS)
@@ -87,7 +104,7 @@ class StripsView(PlotView):
         quiet(panel)
         panel.axhline(0.0, color=INK, linewidth=THIN, zorder=1.5)
         label_axes(panel, "phase" if self._by_phase else "Julian year",
-                   f"{name} ({self._unit[0]})")  # fmt: skip
+                   f"O\u2212C {name} ({self._unit[0]})")  # fmt: skip
         panel.yaxis.set_major_locator(MaxNLocator(4, steps=[1, 2, 5, 10], symmetric=True))
         panel.xaxis.set_major_locator(MaxNLocator(7, steps=[1, 2, 5, 10]))
         panel.ticklabel_format(axis="x", useOffset=False, style="plain")
@@ -112,10 +129,9 @@ class StripsView(PlotView):
             self.moving.append(line)
         today = panel.axvline(0.0, color=self.palette.today, linewidth=0.9, zorder=2,
                               animated=True)  # fmt: skip
-        self._lines[panel]["today", True] = today
         ring = self.ring(panel)
-        self._lines[panel]["ring", True] = ring
-        self.moving += [today, ring]
+        self._over[panel] = today, ring
+        self.light += [today, ring]
 
     def _values(self, of: Residuals) -> dict[Axes, tuple[FloatArray, FloatArray]]:
         """O-C and error of both panels, in the unit of the strips."""
@@ -145,45 +161,51 @@ class StripsView(PlotView):
         if following is None or not self._lines:
             return
         of = following.residuals
-        epochs = np.append(of.epoch, self.model.epoch)
-        x = phase(self.model.elements, epochs) if self._by_phase else epochs
+        x = self._time(of.epoch)
         for panel, (value, error) in self._values(of).items():
             self._feed_panel(panel, of, x, value, error)
+        self.feed_light()
+
+    def feed_light(self) -> None:
+        if self.model.consequences is None:
+            return
+        at = self._time(np.array([self.model.epoch]))
+        for date, ring in self._over.values():
+            date.set_xdata(np.repeat(at, 2))
+            self.feed_ring(ring)
+
+    def _time(self, epochs: FloatArray) -> FloatArray:
+        """What the strips run along, at some epochs."""
+        return phase(self.model.elements, epochs) if self._by_phase else epochs
 
     def _feed_panel(
         self, panel: Axes, of: Residuals, x: FloatArray, value: FloatArray, error: FloatArray
     ) -> None:
         lines, (low, high) = self._lines[panel], panel.get_ylim()
-        x, today = x[:-1], x[-1]
         above, below = value > high, value < low
         inside = ~(above | below)
         for technique, used in groups(of):
             line = lines[technique, used]
             rows = inside & (of.technique == technique) & (of.used == used)
             line.set_data(x[rows], value[rows])
-            ends = np.stack([value[rows] - error[rows], value[rows] + error[rows]])
-            line.bars.set_data(*broken(np.stack([x[rows], ends[0]]), np.stack([x[rows], ends[1]])))
+            if len(of) <= MOST_BARS:
+                low_ends = np.stack([x[rows], value[rows] - error[rows]])
+                high_ends = np.stack([x[rows], value[rows] + error[rows]])
+                line.bars.set_data(*broken(low_ends, high_ends))
         edge = {CARETUP: (above, low + EDGE * (high - low)),
                 CARETDOWN: (below, high - EDGE * (high - low))}  # fmt: skip
         seen = np.array(value)
         for caret, (rows, level) in edge.items():
             seen[rows] = level
             lines[caret, True].set_data(x[rows], seen[rows])
-        lines["today", True].set_xdata([today, today])
         self.spots[panel] = np.stack([x, seen], axis=-1)
-        self.feed_ring(lines["ring", True])
 
     # -- following -----------------------------------------------------------------------------
 
-    def on_change(self, kinds: frozenset[str]) -> None:
+    def outdated(self, kinds: frozenset[str]) -> bool:
         begun = (self.model.consequences is None) != (not self._lines)
         refolded = VIEW in kinds and self._by_phase != self.model.by_phase
-        grown = ORBIT in kinds and self.framed and self._outgrown()
-        if PAIR in kinds or begun or refolded or grown:
-            self.redraw()
-        elif kinds & {ORBIT, SELECTION, VIEW} and self._kept is not None and not self._rebuild:
-            self.feed()
-            self.repaint()
+        return begun or refolded or (ORBIT in kinds and self.framed and self._outgrown())
 
     def _outgrown(self) -> bool:
         """Whether the scale must change: at once after a fit, seldom while nudging."""

@@ -131,7 +131,7 @@ def dress(root: tk.Tk, palette: Palette) -> None:
 def _dress_buttons(style: ttk.Style, sizes: Sizes, p: Palette) -> None:
     style.configure(
         "TButton", padding=(sizes(8), sizes(3)), background=p.ground, bordercolor=p.line,
-        lightcolor=p.ground, darkcolor=p.ground, relief="raised", borderwidth=1,
+        lightcolor=p.ground, darkcolor=p.ground, relief="raised", borderwidth=1, width=0,
     )  # fmt: skip
     style.configure("Choice.TButton", anchor="w")
     style.configure("First.TButton", anchor="w")

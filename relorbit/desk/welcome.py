@@ -48,7 +48,8 @@ class Welcome(ttk.Frame):
         )
         self.examples = []
         for at, (name, words) in enumerate(EXAMPLES):
-            button = ttk.Button(right, text=words, style="First.TButton" if at == 0 else "Choice.TButton",
+            style = "First.TButton" if at == 0 else "Choice.TButton"
+            button = ttk.Button(right, text=words, style=style,
                                 command=lambda n=name: on_example(n))  # fmt: skip
             button.pack(fill="x", pady=(0, sizes(4)))
             self.examples.append(button)

@@ -2,17 +2,12 @@
 
 from __future__ import annotations
 
-from relorbit.derive.consequences import Consequences
 from relorbit.desk.model import DeskModel
 from relorbit.errors import InputError, RelorbitError
 from relorbit.measures.pair import Pair
-from relorbit.show.numbers import angle, fixed, known, significant
+from relorbit.show.numbers import angle, fixed, known
 
 LETTERS = {"node": "\u03a9", "omega": "\u03c9"}
-TITLES = {
-    "P": "period", "T": "periastron", "e": "eccentricity", "a": "semimajor axis",
-    "i": "inclination", "node": "node", "omega": "argument of periastron",
-}  # fmt: skip
 UNITS = {"P": "yr", "T": "yr", "e": "", "a": "\u2033", "i": "\u00b0", "node": "\u00b0",
          "omega": "\u00b0"}  # fmt: skip
 
@@ -65,8 +60,14 @@ def pair_in_words(pair: Pair) -> str:
     return f"{count}{aside}, {fixed(m.epoch.min(), 1)} to {fixed(m.epoch.max(), 1)}"
 
 
-def fit_in_words(following: Consequences) -> str:
-    return f"\u03c7\u00b2 {significant(following.chi2, 5)}"
+def chi2_in_words(chi2: float, sign: bool = False) -> str:
+    """chi2 with a decimal, without one where it is large."""
+    return fixed(chi2, 1 if chi2 < 1e4 else 0, sign=sign)
+
+
+def sentence(words: str) -> str:
+    """Words with a capital and a full stop."""
+    return words[:1].upper() + words[1:] + ("" if words.endswith((".", ":", "?")) else ".")
 
 
 def words_of(error: RelorbitError | ValueError) -> str:

@@ -19,6 +19,7 @@ from numpy.typing import ArrayLike, NDArray
 from relorbit.orbit.kepler import TWO_PI, FloatArray, eccentric_anomaly, unit_ellipse
 
 NAMES = ("P", "T", "e", "a", "i", "node", "omega")
+ANGLES = ("node", "omega")
 # |alpha| or |beta| this much smaller than the other is rounding, and the orbit is face-on
 FACE_ON = 4.0 * np.finfo(float).eps
 _UNITS = {"P": "yr", "a": "arcsec", "i": "deg", "node": "deg", "omega": "deg", "e": ""}
@@ -73,7 +74,7 @@ class Elements:
     def __post_init__(self) -> None:
         for name in NAMES:
             value = _plain(getattr(self, name), name)
-            object.__setattr__(self, name, value % 360.0 if name in ("node", "omega") else value)
+            object.__setattr__(self, name, float(bearing(value)) if name in ANGLES else value)
         for name, good, rule in (
             ("P", self.P > 0.0, "above 0"),
             ("e", 0.0 <= self.e < 1.0, "in 0 <= e < 1"),
@@ -107,6 +108,13 @@ def _plain(value: Any, name: str) -> float:
     if not np.isfinite(number):
         raise ValueError(f"{name} must be a finite number, not {number}")
     return number
+
+
+def bearing(degrees: ArrayLike) -> FloatArray:
+    """Angles brought to [0, 360) degrees."""
+    angle = np.remainder(degrees, 360.0)
+    # the remainder of a tiny negative angle rounds to 360 itself
+    return np.where(angle >= 360.0, 0.0, angle)
 
 
 def projection(elements: Elements) -> tuple[complex, complex]:
@@ -159,9 +167,9 @@ def geometry_from_projection(alpha: Any, beta: Any) -> tuple[Any, Any, Any, Any]
     total, difference = np.angle(alpha), np.angle(beta)
     node = np.where(prograde | retrograde, 0.0, 0.5 * (total + difference))
     omega = np.where(retrograde, -difference, total - node)
-    node, omega = np.degrees(node) % 360.0, np.degrees(omega) % 360.0
-    omega = np.where(node >= 180.0, (omega + 180.0) % 360.0, omega)
-    return p + q, i, node % 180.0, omega
+    node, omega = bearing(np.degrees(node)), np.degrees(omega)
+    other = node >= 180.0
+    return p + q, i, np.where(other, node - 180.0, node), bearing(omega + 180.0 * other)
 
 
 def campbell_from_thiele_innes(constants: ThieleInnes, P: float, T: float, e: float) -> Elements:
@@ -186,9 +194,7 @@ def complex_position(elements: Elements, epochs: ArrayLike) -> NDArray[np.comple
 
 def polar(z: NDArray[np.complex128]) -> tuple[FloatArray, FloatArray]:
     """theta (degrees in [0, 360)) and rho (arcsec) of z = x + i y."""
-    theta = np.degrees(np.angle(z)) % 360.0
-    # the remainder of a tiny negative angle rounds to 360 itself
-    return np.where(theta >= 360.0, 0.0, theta), np.abs(z)
+    return bearing(np.degrees(np.angle(z))), np.abs(z)
 
 
 def positions(elements: Elements, epochs: ArrayLike) -> tuple[FloatArray, FloatArray]:

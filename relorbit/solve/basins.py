@@ -11,7 +11,17 @@ from relorbit.orbit.elements import projection_from_constants
 from relorbit.orbit.kepler import TWO_PI, FloatArray
 from relorbit.solve.linear import SkyData, fit_constants, sky_data
 from relorbit.solve.observations import Observations
-from relorbit.solve.refine import Holding, Problem, Refined, polar_problem, refine, sky_problem
+from relorbit.solve.refine import (
+    HIGHEST_E,
+    LARGEST_STEP,
+    Holding,
+    Problem,
+    Refined,
+    covariance,
+    polar_problem,
+    refine,
+    sky_problem,
+)
 from relorbit.solve.search import ECCENTRICITIES, period_grid, search
 
 STARTS = 32  # minima of the map that are followed down
@@ -19,6 +29,8 @@ FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 100
 ALWAYS_FOLLOWED = 10, 4  # best orbits that go on whatever their chi2, at first and at last
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
+CLOSE = 0.15  # error of theta (radians) beyond which the side of the primary is uncertain
+SPREAD_ORBITS, SPREAD = 2, (-4.0, -2.0, 2.0, 4.0)  # orbits spread from, in standard deviations
 SAME = 1e-4  # orbits whose coordinates differ by less than this, in units of their size, are one
 
 
@@ -53,7 +65,10 @@ def find_basins(
     report = on_progress or (lambda share: None)
     u = starting_orbits(data, t0, held, period_range, lambda share: report(0.5 * share))
     few = _fewer(observations)
-    u = _follow(sky_problem(sky_data(few), t0), u, held, lambda: report(0.5))
+    sky = sky_problem(sky_data(few), t0)
+    u = _follow(sky, u, held, lambda: report(0.5))
+    if np.any((few.per_theta > 0.0) & (few.per_theta * CLOSE < 1.0)):
+        u = _both_sides(sky, polar_problem(few, t0), u, held, lambda: report(0.6))
     return t0, settle(polar_problem(observations, t0), u, held, lambda: report(0.7))
 
 
@@ -63,9 +78,13 @@ def settle(
     """Distinct minima of the problem, best first, from near starts u, shape (c, 7)."""
     rough = refine(problem, u, held, LATER_STEPS, 1e-2, on_step=on_step)
     keep = _near_the_best(_distinct(rough.u, rough.chi2), rough.chi2)
-    fine = refine(problem, rough.u[keep], held, LAST_STEPS, on_step=on_step)
+    fine = refine(problem, rough.u[keep], held, LAST_STEPS, 1e-9, on_step=on_step)
     keep = _near_the_best(_distinct(fine.u, fine.chi2), fine.chi2)
-    return Refined(fine.u[keep], fine.chi2[keep], rough.iterations + fine.iterations)
+    # what is still on its way is no orbit of its own; the best is the best all the same
+    keep = keep[fine.at_rest[keep] | (np.arange(keep.size) == 0)]
+    return Refined(
+        fine.u[keep], fine.chi2[keep], fine.at_rest[keep], rough.iterations + fine.iterations
+    )
 
 
 def starting_orbits(
@@ -109,6 +128,37 @@ def _follow(
     later = refine(problem, first.u[keep], held, LATER_STEPS, 1e-2, on_step=on_step)
     keep = _distinct(later.u, later.chi2)
     return later.u[keep[_hopeful(later.chi2[keep], ALWAYS_FOLLOWED[1])]]
+
+
+def _both_sides(
+    sky: Problem, polar: Problem, u: FloatArray, held: Holding, on_step: Callable[[], None]
+) -> FloatArray:
+    """Orbits, shape (c, 7), near some minima in x and y, that theta may prefer.
+
+    Where a companion is hardly told from the primary, its angle leaves open on which side of the
+    primary the orbit passes, and chi2 in theta has a minimum for each answer. They lie within a
+    few standard deviations of one another, so starts are spread around what fits x and y, and
+    once more around the best that is found.
+    """
+    starts = np.concatenate([u, *(_spread(sky, one, held) for one in u[:SPREAD_ORBITS])])
+    first = refine(polar, starts, held, LATER_STEPS, 1e-2, on_step=on_step)
+    best = first.u[np.argmin(first.chi2)]
+    second = refine(polar, _spread(polar, best, held), held, LATER_STEPS, 1e-2, on_step=on_step)
+    every, chi2 = np.concatenate([first.u, second.u]), np.append(first.chi2, second.chi2)
+    keep = _distinct(every, chi2)
+    return every[keep[: len(u) + ALWAYS_FOLLOWED[1]]]
+
+
+def _spread(problem: Problem, u: FloatArray, held: Holding) -> FloatArray:
+    """Orbits two and four standard deviations from u, shape (7,), along each principal axis."""
+    matrix = covariance(problem, u, held)
+    size = np.sqrt(np.diag(matrix))
+    size = np.where(size > 0.0, size, 1.0)
+    share, axes = np.linalg.eigh(matrix / np.outer(size, size))
+    steps = (axes * np.sqrt(np.maximum(share, 0.0))).T * size
+    spread = u + np.concatenate([scale * steps for scale in SPREAD])
+    sound = np.all(np.isfinite(spread), axis=1) & (np.hypot(spread[:, 1], spread[:, 2]) < HIGHEST_E)
+    return spread[sound & (np.abs(spread[:, 0] - u[0]) < LARGEST_STEP)]
 
 
 def _hopeful(chi2: FloatArray, always: int) -> NDArray[np.bool_]:

@@ -167,10 +167,20 @@ class Holding:
 
 @dataclass(frozen=True)
 class Refined:
-    """Orbits after refinement: u, shape (c, 7), and chi2, shape (c,)."""
+    """Orbits after refinement.
+
+    Attributes
+    ----------
+    u : ndarray, shape (c, 7)
+    chi2 : ndarray, shape (c,)
+    at_rest : bool ndarray, shape (c,)
+        False where the iterations ended first.
+    iterations : int
+    """
 
     u: FloatArray
     chi2: FloatArray
+    at_rest: NDArray[np.bool_]
     iterations: int
 
 
@@ -240,7 +250,9 @@ def refine(
         u[moved], chi2[moved] = trial[better], chi2_trial[better]
         normal[moved], right[moved] = normal_trial[better], right_trial[better]
         active = active[better | (damping[active] <= MOST_DAMPING)]
-    return Refined(u, chi2, iteration)
+    still = np.ones(chi2.size, dtype=bool)
+    still[active] = False
+    return Refined(u, chi2, still, iteration)
 
 
 def _normal_equations(problem: Problem, u: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:

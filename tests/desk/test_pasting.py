@@ -27,7 +27,7 @@ VISIBLE = ("epoch", "theta", "rho", "technique", "observer", "note", "theta_err"
         ">> 1990.5 10.5 1.25\n>> 1991.5 12 1.3\n",
         "\n\n  1990.5 10.5° 1.25\"\n\n  1991.5 12° 1.3\"\n\n",
         "date PA sep\n1990.5 10.5 1.25\n1991.5 12 1.3",
-        "# epoch theta rho\n1990.5 10.5 1.25\n1991.5 12 1.3",
+        "# epoch rho theta\n1990.5 1.25 10.5\n1991.5 1.3 12",
         "Epoch\tSep (mas)\tPA (deg)\n1990.5\t1250\t10.5\n1991.5\t1300\t12\n",
     ],
 )  # fmt: skip
@@ -46,6 +46,11 @@ def test_errors_follow_and_what_is_missing():
     np.testing.assert_array_equal(m.theta_err, [0.5, NAN])
     np.testing.assert_array_equal(m.rho_err, [0.01, 0.02])
     assert set(m.equinox) == {"J2000"} and intake.lines.tolist() == [1, 2]
+
+
+def test_all_five_between_bars():
+    m = read_pasted("| 1990.5 | 10.5 | 1.25 | 0.5 | 0.01 |\n").measures
+    assert (m.rho[0], m.theta_err[0], m.rho_err[0]) == (1.25, 0.5, 0.01)
 
 
 def test_dates():

@@ -156,6 +156,23 @@ def test_a_name_too_long_to_hide_beside_the_file(session, tmp_path):
     assert hidden(tmp_path / "config" / "unsaved") == []
 
 
+def test_a_folder_that_goes_and_comes_back(session, tmp_path):
+    """A stick pulled out: the work is kept among the settings until it is back."""
+    folder = tmp_path / "stick"
+    folder.mkdir()
+    path = pair_file(folder)
+    session.open_file(path)
+    session.model.flip([0])
+    path.unlink()
+    folder.rmdir()
+    assert session.tick(0.0) is None
+    assert len(hidden(tmp_path / "config" / "unsaved")) == 1
+    folder.mkdir()
+    session.model.flip([1])
+    session.tick(10.0)
+    assert hidden(tmp_path / "config" / "unsaved") == [] and len(hidden(folder)) == 1
+
+
 def test_nowhere_to_keep_it_is_said_once(session, tmp_path, monkeypatch):
     session.open_file(pair_file(tmp_path))
     session.model.flip([0])
@@ -279,8 +296,7 @@ def test_work_on_a_plain_list(session, tmp_path):
     path = tmp_path / "list.csv"
     path.write_text("epoch,theta,rho\n1990.5,10.0,1.0\n")
     kill(window(tmp_path / "config", path))
-    session.open_file(path)
-    (left,) = session.found()
+    (left,) = rescue.found(path, tmp_path / "config")
     session.restore(left)
     assert session.needs_name and session.suggested_path() == tmp_path / "list.ecsv"
     with pytest.raises(InputError, match="is not a pair file and stays as it is"):

@@ -75,8 +75,8 @@ def test_unit_ellipse_keeps_its_precision_at_periastron():
             exact, e = mpmath.mpf(E), mpmath.mpf(0.9999)
             along = float(mpmath.cos(exact) - e)
             across = float(mpmath.sqrt(1 - e * e) * mpmath.sin(exact))
-        assert X == pytest.approx(along, rel=1e-15, abs=0.0)
-        assert Y == pytest.approx(across, rel=1e-15, abs=0.0)
+        assert pytest.approx(along, rel=1e-15, abs=0.0) == X
+        assert pytest.approx(across, rel=1e-15, abs=0.0) == Y
 
 
 def test_apsides_exactly():

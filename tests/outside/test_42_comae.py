@@ -26,6 +26,9 @@ import pytest
 import relorbit
 from relorbit.measures.reduction import reduce_pair
 from relorbit.orbit.elements import Elements, positions
+from relorbit.orbit.regular import regular_from_elements
+from relorbit.solve.observations import observe
+from relorbit.solve.refine import polar_problem, refine
 
 MODERN = Elements(25.870, 2015.092, 0.5106, 0.67144, 90.05, 12.227, 100.563)
 # within 0.2 arcsec, no separation given, and more than 20 deg off the modern orbit
@@ -89,6 +92,15 @@ def test_the_measures_name_one_orbit(solution):
     assert solution.used == 20
     # printed errors there are none; the usual ones are a quarter too small for these
     assert 1.0 < solution.error_scale < 1.5
+
+
+def test_what_is_called_another_orbit_is_a_minimum(solution):
+    """Taken up again and followed to the end, an alternative stays; else it was on its way."""
+    observations = observe(pair_of().measures)
+    problem = polar_problem(observations, observations.mean_epoch)
+    for other in (solution, *solution.alternatives):
+        u = regular_from_elements(other.elements, problem.reference_epoch)
+        assert other.chi2 - refine(problem, u, most_iterations=1000).chi2[0] < 1e-3
 
 
 def test_angles_read_in_0_to_180_are_put_right_by_flips(solution):

@@ -165,7 +165,7 @@ def test_a_line_is_refused_whatever_is_held() -> None:
 def arcs() -> list[tuple[int, Pair]]:
     """Seeded arcs of 8 to 14 % of a revolution of pairs with a period of 600 years."""
     pairs = []
-    for seed in range(40):
+    for seed in range(24):
         rng = np.random.default_rng([8, seed])
         elements = Elements(
             600.0, 2000.0 + rng.uniform(-300.0, 300.0), rng.uniform(0.0, 0.8), 3.0,
@@ -185,7 +185,7 @@ def test_lower_limits_lie_below_the_true_period() -> None:
             codes.add(error.code)
             limits.append(error.known["P_lower_limit"])
             assert "longer than about" in error.reason
-    assert len(limits) >= 20
+    assert len(limits) >= 16
     assert codes == {"straight-line", "period-unbounded"}
     below = np.mean(np.array(limits) < 600.0)
     assert below >= 0.9
