@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
 
 def add_pair(parser: argparse.ArgumentParser, optional: bool = False) -> None:
+    """The pair that a verb works on."""
     parser.add_argument(
         "pair",
         metavar="PAIR",
@@ -31,6 +32,7 @@ def add_pair(parser: argparse.ArgumentParser, optional: bool = False) -> None:
 
 
 def add_json(parser: argparse.ArgumentParser) -> None:
+    """The choice of JSON for programs."""
     parser.add_argument("--json", action="store_true", help="print JSON instead of a table")
 
 
@@ -66,6 +68,7 @@ def add_orbit(parser: argparse.ArgumentParser) -> None:
 
 
 def read(options: argparse.Namespace) -> Pair:
+    """The pair that was named."""
     from relorbit.measures.store import read_pair
 
     return read_pair(options.pair, allow_any_epoch=options.any_epoch)
@@ -160,6 +163,7 @@ def _range(text: str | None, option: str) -> tuple[float, float] | None:
 
 
 def print_json(content: Any) -> None:
+    """Print what a program will read."""
     json.dump(content, sys.stdout, indent=2, allow_nan=False)
     sys.stdout.write("\n")
 

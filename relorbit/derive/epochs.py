@@ -28,7 +28,7 @@ def epoch_from_text(text: str) -> float:
     Raises InputError for anything else.
     """
     if not text.strip():
-        raise InputError("an epoch is empty; write a year such as 1998.345, or a date")
+        raise InputError("epoch is empty; write a year such as 1998.345, or a date")
     return float(julian_years([text], "auto", lambda _, what: InputError(f"epoch {what}"))[0])
 
 

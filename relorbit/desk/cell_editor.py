@@ -88,7 +88,6 @@ class CellEditor:
         self.field.lift()
         if self.wrong.cget("text"):
             self.wrong.configure(wraplength=max(room - 20, 80))
-            self.table.tree.update_idletasks()
             x = max(0, min(x, room - self.wrong.winfo_reqwidth() - 4))
             below = y + height + 2
             if below + self.wrong.winfo_reqheight() > self.table.tree.winfo_height():
@@ -109,7 +108,6 @@ class CellEditor:
                 tree.xview_scroll(1, "units")
             else:
                 break
-            tree.update_idletasks()
         self.follow()
 
     def cancel(self) -> str:

@@ -27,7 +27,8 @@ class ElementsView(ttk.Frame):
         super().__init__(parent)
         self.model, self.sizes = model, Sizes(self)
         self.drafts: dict[str, float] = {}
-        self._heading(commands)
+        self._heading()
+        self._verbs(commands)
         table = ttk.Frame(self)
         table.pack(fill="x")
         self.rows = {name: ElementRow(self, table, at, name) for at, name in enumerate(NAMES, 1)}
@@ -38,10 +39,9 @@ class ElementsView(ttk.Frame):
         table.columnconfigure(5, weight=1)
         self.word = ttk.Label(self, style="Quiet.TLabel", wraplength=self.sizes(330))
         self.word.pack(fill="x", pady=(self.sizes(4), 0))
-        self._feet(commands)
         self.bind("<Configure>", self._wrap)
 
-    def _heading(self, commands: CommandSet) -> None:
+    def _heading(self) -> None:
         line = ttk.Frame(self)
         line.pack(fill="x", pady=(0, self.sizes(4)))
         self.chi2 = ttk.Label(line, style="Reading.TLabel")
@@ -54,14 +54,14 @@ class ElementsView(ttk.Frame):
         self.parallax.grid(row=1, column=1, sticky="e")
         line.columnconfigure(1, weight=1)
 
-    def _feet(self, commands: CommandSet) -> None:
-        feet = ttk.Frame(self)
-        feet.pack(fill="x", pady=(self.sizes(6), 0))
+    def _verbs(self, commands: CommandSet) -> None:
+        line = ttk.Frame(self)
+        line.pack(fill="x", pady=(0, self.sizes(5)))
         for at, name in enumerate(("solve", "refine", "keep")):
             style = "Next.TButton" if name == "solve" else "TButton"
-            button = commands.button(feet, name, style)
-            button.grid(row=0, column=at, sticky="ew", padx=(0, self.sizes(4)))
-            feet.columnconfigure(at, weight=1)
+            button = commands.button(line, name, style)
+            button.grid(row=0, column=at, sticky="ew", padx=(0, self.sizes(4) if at < 2 else 0))
+            line.columnconfigure(at, weight=1)
 
     def _wrap(self, event: tk.Event) -> None:
         self.word.configure(wraplength=max(event.width - self.sizes(6), 100))

@@ -25,7 +25,7 @@ from relorbit.solve.solution import Solution
 PATIENCE = 150  # milliseconds without a change before the longer texts are written anew
 NO_ORBIT = "Nothing follows yet: there is no orbit. Press Solve."
 PROVISIONAL = "Orbits from short arcs are provisional."
-SUN = CAUTION.split("\n", 1)[0].partition(". ")[2] + " " + CAUTION.split("\n", 1)[1]
+SUN = CAUTION.replace("\n", " ").removeprefix(PROVISIONAL).strip()
 
 
 class FollowsView(ttk.Frame):
@@ -173,26 +173,27 @@ class EphemerisPage(ttk.Frame):
         line.pack(fill="x", padx=sizes(6), pady=sizes(4))
         first = int(year) + 1
         self.fields: dict[str, ttk.Entry] = {}
-        for name, value, width in (("from", first, 10), ("to", first + 10, 10),
-                                   ("step", "1 year", 9)):  # fmt: skip
+        for name, value, width in (("from", first, 9), ("to", first + 10, 9),
+                                   ("step", "1 year", 8)):  # fmt: skip
             ttk.Label(line, text=name).pack(side="left", padx=(0, sizes(3)))
             field = ttk.Entry(line, width=width)
             field.insert(0, str(value))
-            field.pack(side="left", padx=(0, sizes(8)))
+            field.pack(side="left", padx=(0, sizes(6)))
             field.bind("<KeyRelease>", lambda _: self.write(self._there))
             self.fields[name] = field
-        for name in ("copy_ephemeris", "save_ephemeris"):
-            commands.button(line, name).pack(side="left", padx=(0, sizes(4)))
         self._there = False
         self.wrong = ttk.Label(self, style="Warn.TLabel", wraplength=sizes(420))
-        caution = ttk.Label(self, text=SUN.replace("\n", " "), style="Small.TLabel",
-                            wraplength=sizes(420), justify="left")  # fmt: skip
-        caution.pack(side="bottom", fill="x", padx=sizes(6), pady=sizes(3))
+        feet = ttk.Frame(self)
+        feet.pack(side="bottom", fill="x", padx=sizes(6), pady=sizes(4))
+        for name in ("save_ephemeris", "copy_ephemeris"):
+            commands.button(feet, name).pack(side="right", padx=(sizes(4), 0))
+        caution = ttk.Label(feet, text=SUN, style="Small.TLabel", justify="left")
+        caution.pack(side="left", fill="x", expand=True)
         self.page = TextPage(self)
         self.page.pack(fill="both", expand=True)
         self.bind("<Configure>", lambda event: [
-            label.configure(wraplength=max(event.width - sizes(12), 100))
-            for label in (caution, self.wrong)])  # fmt: skip
+            label.configure(wraplength=max(event.width - sizes(room), 100))
+            for label, room in ((caution, 150), (self.wrong, 12))])  # fmt: skip
 
     @property
     def asked(self) -> tuple[str, str, str]:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import tkinter as tk
 from collections.abc import Iterable
-from itertools import pairwise
 from tkinter import ttk
 
 from relorbit.cli.main import CAUTION
@@ -12,44 +11,42 @@ from relorbit.desk.commands import MENUS, Command
 from relorbit.desk.dialogs import Dialog
 from relorbit.desk.theme import Palette, Sizes
 
-COLUMNS = 3
 BEGIN = """Open a pair and press Solve: every orbit that fits is found, without a starting guess.
-Then look at the residuals. Point at a measure to read it, click to select it: it is marked in the
-table, on the sky and in the strips alike. W goes to the measure that is farthest off. F turns its
-quadrant, X sets it aside with a reason, U uses it again. Nothing observed is ever lost.
+Point at a measure to read it, click to select it everywhere. W goes to the one that is farthest
+off; F turns its quadrant, X sets it aside with a reason, U uses it again: nothing observed is lost.
 Refine from here fits again without a search. Keep puts the orbit on record with the pair."""
 MOUSE = (
-    ("wheel", "zoom; in the strips with Shift: the residuals"),
-    ("drag", "a box that selects; with Shift or Ctrl to add"),
-    ("right button", "drag to move the picture, click for a menu"),
-    ("space and drag", "move the picture"),
-    ("double click", "on a picture: show all again; on a cell: edit it"),
+    ("wheel", "zoom; with Shift: residuals"),
+    ("drag", "select; with Shift: add"),
+    ("right drag", "move the picture"),
+    ("space drag", "move the picture"),
+    ("right click", "menu of the selection"),
+    ("double click", "show all again; edit a cell"),
 )
 CELLS = (
-    ("Up, Down", "in the table: another measure; in an element: a step, with Shift a fine one"),
-    ("Return", "in the table: edit the cell; in a field: take what was typed"),
-    ("Tab", "in a cell: take it and go to the next"),
-    ("Esc", "give up what is being typed; select nothing"),
+    ("Up, Down", "a row; a step of an element"),
+    ("Shift+Up", "select; a fine step"),
+    ("Return", "edit a cell; take what is typed"),
+    ("Tab", "take a cell, go to the next"),
+    ("Esc", "give up what is typed"),
 )
 
 
-def key_list(commands: Iterable[Command]) -> list[tuple[str, str, str]]:
-    """Menu, key and label of every command that has a key."""
-    commands = tuple(commands)
-    return [(menu, one.key_label, one.label.rstrip("\u2026")) for menu in MENUS
-            for one in commands if one.menu == menu and one.key]  # fmt: skip
+# three columns of about one height: menus, and lines after them; a line without a key is a title
+COLUMNS = (
+    (("File", "Edit"), (("", "In fields and tables"), *CELLS)),
+    (("Measures", "Orbit", "Help"), ()),
+    (("View",), (("", "With the mouse"), *MOUSE)),
+)
 
 
-def help_lines(commands: Iterable[Command]) -> list[tuple[str, str]]:
-    """Key and what it does, line by line; a line without a key is a title."""
-    lines: list[tuple[str, str]] = []
-    last = ""
-    for menu, key, label in key_list(commands):
-        if menu != last:
-            lines.append(("", menu))
-        last = menu
-        lines.append((key, label))
-    return [*lines, ("", "With the mouse"), *MOUSE, ("", "In fields and tables"), *CELLS]
+def key_list(commands: Iterable[Command]) -> dict[str, list[tuple[str, str]]]:
+    """Key and label of every command that has a key, by menu."""
+    keys: dict[str, list[tuple[str, str]]] = {menu: [] for menu in MENUS}
+    for one in commands:
+        if one.key:
+            keys[one.menu].append((one.key_label, one.label.rstrip("\u2026")))
+    return keys
 
 
 def _put_lines(parent: tk.Misc, lines: Iterable[tuple[str, str]], sizes: Sizes) -> None:
@@ -59,7 +56,7 @@ def _put_lines(parent: tk.Misc, lines: Iterable[tuple[str, str]], sizes: Sizes) 
             title.grid(row=row, column=0, columnspan=2, sticky="w", pady=(sizes(5), 0))
             continue
         ttk.Label(parent, text=key).grid(row=row, column=0, sticky="nw", padx=(0, sizes(10)))
-        ttk.Label(parent, text=label, style="Quiet.TLabel", wraplength=sizes(205),
+        ttk.Label(parent, text=label, style="Quiet.TLabel", wraplength=sizes(240),
                   justify="left").grid(row=row, column=1, sticky="w")  # fmt: skip
 
 
@@ -71,12 +68,9 @@ def show_help(parent: tk.Misc, palette: Palette, commands: Iterable[Command]) ->
               justify="left").pack(anchor="w")  # fmt: skip
     grid = ttk.Frame(dialog.inner)
     grid.pack(fill="both", expand=True, pady=sizes(8))
-    lines = help_lines(commands)
-    titles = [at for at, (key, _) in enumerate(lines) if not key]
-    cuts = [min(titles, key=lambda at, k=k: abs(COLUMNS * at - k * len(lines)))
-            for k in range(1, COLUMNS)]  # fmt: skip
-    for first, last in pairwise([0, *cuts, len(lines)]):
-        part = lines[first:last]
+    keys = key_list(commands)
+    for menus, more in COLUMNS:
+        part = [line for menu in menus for line in [("", menu), *keys[menu]]] + list(more)
         column = ttk.Frame(grid)
         column.pack(side="left", anchor="n", padx=(0, sizes(14)))
         _put_lines(column, part, sizes)

@@ -44,7 +44,7 @@ class OrbitActions:
             Command("keep", "Keep on record\u2026", "Orbit", "Control-k", self.keep, d.has_orbit,
                     "Keep\u2026"),
             Command("drop", "Take off the record\u2026", "Orbit", "", self.drop,
-                    lambda: self._recorded() is not None, "Take off the record"),
+                    lambda: self._recorded() is not None, "Take off"),
             Command("copy_elements", "Copy the elements", "Orbit", "Control-e", self.copy_elements,
                     d.has_orbit),
             Command("copy_residuals", "Copy the residuals", "Orbit", "", self.copy_residuals,

@@ -14,8 +14,8 @@ from relorbit.orbit.elements import Elements
 from relorbit.show.numbers import fixed, significant
 
 HERE = "this orbit"
-COLUMNS = (("P", "P yr", 64), ("e", "e", 52), ("a", "a \u2033", 60), ("chi2", "\u03c7\u00b2", 72),
-           ("rise", "more", 64))  # fmt: skip
+COLUMNS = (("P", "P yr", 54), ("e", "e", 52), ("a", "a \u2033", 52), ("chi2", "\u03c7\u00b2", 56),
+           ("rise", "more", 66))  # fmt: skip
 
 
 class OrbitsList(ttk.Frame):
@@ -29,7 +29,7 @@ class OrbitsList(ttk.Frame):
         tree = ttk.Treeview(self, columns=[name for name, _, _ in COLUMNS], height=3,
                             selectmode="browse")  # fmt: skip
         tree.heading("#0", text="orbit", anchor="w")
-        tree.column("#0", width=sizes(150), minwidth=sizes(80))
+        tree.column("#0", width=sizes(100), minwidth=sizes(80))
         for name, heading, width in COLUMNS:
             tree.heading(name, text=heading, anchor="e")
             tree.column(name, width=sizes(width), minwidth=sizes(40), anchor="e", stretch=False)
@@ -82,7 +82,8 @@ class OrbitsList(ttk.Frame):
     def chosen(self) -> tuple[str, object] | None:
         """The line chosen."""
         lines = self.tree.selection()
-        return self._takes.get(lines[0]) if lines else None
+        key = self._takes.get(lines[0]) if lines else None
+        return key if key in self.listed() else None  # the list may be a moment behind
 
     def take_up(self) -> None:
         """Work on the orbit of the line chosen."""

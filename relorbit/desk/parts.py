@@ -13,6 +13,7 @@ from relorbit.desk.theme import Palette, Sizes
 from relorbit.desk.words import pair_in_words
 
 # share of the room to the left of, or above, each divider
+FOLLOWS = 405  # pixels at 96 an inch that the orbits side by side need
 DIVIDERS = {"upper 0": 0.37, "upper 1": 0.72, "lower 0": 0.6, "rows 0": 0.56}
 
 
@@ -24,12 +25,12 @@ class Bench(ttk.Frame):
         sizes = Sizes(self)
         self.name = ttk.Label(self, style="Name.TLabel")
         self.name.pack(side="left", padx=(sizes(10), sizes(10)), pady=sizes(6))
-        self.about = ttk.Label(self, style="Quiet.TLabel")
-        self.about.pack(side="left")
         buttons = ("undo", "redo", "doubt", "flip", "aside", "use", "add")
         for name in reversed(buttons):
             gap = sizes(14) if name in ("redo", "use") else sizes(4)
             commands.button(self, name).pack(side="right", padx=(0, gap))
+        self.about = ttk.Label(self, style="Quiet.TLabel")
+        self.about.pack(side="left")  # after the buttons: where room is short it is the one cut
         self._work = ttk.Frame(self)
         self._label = ttk.Label(self._work, style="Quiet.TLabel")
         self._label.pack(side="left", padx=(0, sizes(6)))
@@ -85,11 +86,25 @@ class Panes(ttk.Frame):
         for which in ("rows", "upper", "lower"):
             panes = self._all[which]
             for at in range(len(panes.panes()) - 1):
-                name = f"{which} {at}"
+                name, length = f"{which} {at}", self._length(panes)
                 share = self._settings.panes.get(name, DIVIDERS[name])
-                share = min(max(share, 0.05), 0.95)
-                panes.sashpos(at, round(share * self._length(panes)))
+                place = round(min(max(share, 0.05), 0.95) * length)
+                if name not in self._settings.panes:
+                    place = self._roomy(name, place, length)
+                panes.sashpos(at, place)
                 panes.update_idletasks()
+
+    def _roomy(self, name: str, place: int, length: int) -> int:
+        """A usual place, moved where the elements, which do not shrink, need more room."""
+        elements = self.nametowidget(self.upper.panes()[-1])
+        if name == "rows 0":
+            return min(max(place, elements.winfo_reqheight()), round(0.75 * length))
+        right = length - elements.winfo_reqwidth() - Sizes(self)(8)
+        if name == "upper 1":
+            return min(place, right)
+        if name == "upper 0":
+            return min(place, right // 2)
+        return min(place, length - Sizes(self)(FOLLOWS))
 
     def remember(self) -> None:
         for which, panes in self._all.items():

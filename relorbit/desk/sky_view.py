@@ -258,11 +258,11 @@ class DateBar(ttk.Frame):
         self.model = model
         self._moved_by_model = False
         ttk.Label(self, text="at", style="Quiet.TLabel").grid(row=0, column=0)
-        self.field = ttk.Entry(self, width=11)
+        self.field = ttk.Entry(self, width=10)
         self.field.grid(row=0, column=1, padx=4, pady=2)
         self.slider = ttk.Scale(self, orient="horizontal", command=self._slid)
         self.slider.grid(row=0, column=2, sticky="ew", padx=4)
-        self.place = ttk.Label(self, anchor="e", width=19)
+        self.place = ttk.Label(self, anchor="e", width=17)
         self.place.grid(row=0, column=3)
         self.columnconfigure(2, weight=1)
         self.field.bind("<Return>", self._typed)

@@ -24,6 +24,7 @@ from relorbit.show.residual_plot import panel_limit, residual_unit
 from relorbit.solve.residuals import Residuals
 
 INSETS = (56.0, 10.0, 32.0, 26.0, 8.0)  # left, right, bottom, top, between: pixels at 96 an inch
+LOW = 130  # pixels at 96 an inch: a lower panel has room for a short title only
 EDGE = 0.95  # of half the height: where a residual beyond the scale is marked
 MOST_BARS = 3000  # of more measures the error bars would be one solid band
 SLACK = (0.45, 1.25)  # the scale follows when what it must hold is smaller or larger than this
@@ -102,9 +103,12 @@ class StripsView(PlotView):
 
     def _build_panel(self, panel: Axes, name: str, of: Residuals) -> None:
         quiet(panel)
+        title = f"O\u2212C {name} ({self._unit[0]})"
+        if panel.bbox.height < self.sizes(LOW):
+            title = f"{name} ({self._unit[0]})"
         panel.axhline(0.0, color=INK, linewidth=THIN, zorder=1.5)
         label_axes(panel, "phase" if self._by_phase else "Julian year",
-                   f"O\u2212C {name} ({self._unit[0]})")  # fmt: skip
+                   title)  # fmt: skip
         panel.yaxis.set_major_locator(MaxNLocator(4, steps=[1, 2, 5, 10], symmetric=True))
         panel.xaxis.set_major_locator(MaxNLocator(7, steps=[1, 2, 5, 10]))
         panel.ticklabel_format(axis="x", useOffset=False, style="plain")

@@ -172,7 +172,7 @@ class TableView(ttk.Frame):
         """Write the visible rows into the widget."""
         if not self.winfo_exists():
             return
-        wanted = min(self.height + 1, len(self.rows))
+        wanted = min(self.height, len(self.rows))
         while len(self._lines) < wanted:
             self._lines.append(self.tree.insert("", "end"))
         while len(self._lines) > wanted:
@@ -221,7 +221,6 @@ class TableView(ttk.Frame):
         line = at - self.first
         if not 0 <= line < len(self._lines):
             return None
-        self.tree.update_idletasks()
         box = self.tree.bbox(self._lines[line], column)
         return tuple(box) if box else None
 

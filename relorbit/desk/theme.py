@@ -16,6 +16,7 @@ from matplotlib.text import Text
 
 from relorbit.show import colours
 
+LEAST_ROOM = (960, 540)  # pixels of 96 an inch that the desk needs
 TEXT_SIZE, SMALL_SIZE, NAME_SIZE, READING_SIZE = 9, 8, 13, 12  # points
 
 
@@ -75,6 +76,13 @@ class Sizes:
     def __call__(self, length: float) -> int:
         """Pixels for a length given in pixels of a display of 96 dots an inch."""
         return max(1, round(length * self._factor))
+
+
+def set_scaling(root: tk.Misc, factor: float) -> None:
+    """Sizes `factor` times those of the display, as far as all of the desk still fits on it."""
+    room = min(root.winfo_screenwidth() / LEAST_ROOM[0], root.winfo_screenheight() / LEAST_ROOM[1])
+    wanted = float(root.tk.call("tk", "scaling")) * factor
+    root.tk.call("tk", "scaling", min(wanted, max(room, 1.0) * 96.0 / 72.0))
 
 
 def set_fonts(root: tk.Misc) -> None:

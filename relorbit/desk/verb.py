@@ -5,7 +5,9 @@ to work on by eye and hand. Without a pair file it opens with a choice of what t
 from __future__ import annotations
 
 import argparse
+from importlib import import_module
 from pathlib import Path
+from threading import Thread
 
 from relorbit.errors import InputError
 
@@ -39,6 +41,8 @@ def run(options: argparse.Namespace) -> int:
 
         read_pair(options.pair)
     require_display()
+    # saving needs a library that is slow to load: begin now, and not in the midst of work
+    Thread(target=import_module, args=("astropy.table",), daemon=True).start()
     from relorbit.desk.window import run as open_window
 
     return open_window(options.pair)

@@ -11,8 +11,7 @@ from relorbit.desk.commands import CommandSet
 from relorbit.desk.session import EXAMPLES
 from relorbit.desk.theme import Sizes
 
-INTRO = """A desk for double-star measures: find the orbit of a pair, see what every measure says
-of it, and what follows."""
+INTRO = "Find the orbit of a double star, see what every measure says of it, and what follows."
 
 
 class Welcome(ttk.Frame):
@@ -33,11 +32,11 @@ class Welcome(ttk.Frame):
         ttk.Label(inner, text="relorbit", style="Name.TLabel").grid(
             row=0, column=0, columnspan=2, sticky="w"
         )
-        ttk.Label(inner, text=INTRO.replace("\n", " "), style="Quiet.TLabel", justify="left",
-                  wraplength=sizes(640)).grid(
-            row=1, column=0, columnspan=2, sticky="w", pady=(sizes(2), sizes(18)))  # fmt: skip
+        ttk.Label(inner, text=INTRO, style="Quiet.TLabel").grid(
+            row=1, column=0, columnspan=2, sticky="w", pady=(sizes(2), sizes(18))
+        )
         left = ttk.Frame(inner)
-        left.grid(row=2, column=0, sticky="n", padx=(0, sizes(36)))
+        left.grid(row=2, column=0, sticky="nw", padx=(0, sizes(36)))
         for name in ("open", "new", "read"):
             button = commands.button(left, name)
             button.pack(fill="x", pady=(0, sizes(6)), ipady=sizes(2), ipadx=sizes(6))

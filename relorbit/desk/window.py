@@ -27,7 +27,7 @@ from relorbit.desk.settings import LARGEST_SCALE, SMALLEST_SCALE, Settings
 from relorbit.desk.sky_view import SkyView
 from relorbit.desk.strips_view import StripsView
 from relorbit.desk.table_view import TableView
-from relorbit.desk.theme import PALETTES, Sizes, dress, set_fonts
+from relorbit.desk.theme import PALETTES, Sizes, dress, set_fonts, set_scaling
 from relorbit.desk.welcome import Welcome
 from relorbit.desk.words import words_of
 from relorbit.desk.worker import Outcome, Worker
@@ -58,9 +58,7 @@ class Desk:
         self._faulty = False
         self._closing = False
         self._welcoming = True
-        if self.settings.scale:
-            factor = float(self.root.tk.call("tk", "scaling"))
-            self.root.tk.call("tk", "scaling", factor * self.settings.scale)
+        set_scaling(self.root, self.settings.scale or 1.0)
         self.sizes = Sizes(self.root)
         self.palette = PALETTES["dark" if self.settings.dark else "light"]
         set_fonts(self.root)

@@ -66,7 +66,7 @@ def total_mass(
     if uncertainty is not None:
         u = regular_from_elements(elements, uncertainty.reference_epoch)
         gradient = axis_and_period_gradient(u)
-        orbit = value * float(np.sqrt(gradient @ uncertainty.covariance @ gradient))
+        orbit = value * float(np.sqrt(max(gradient @ uncertainty.covariance @ gradient, 0.0)))
     if parallax_err_mas is not None:
         parallax = value * 3.0 * parallax_err_mas / parallax_mas
     parts = [part for part in (orbit, parallax) if part is not None]
@@ -83,4 +83,4 @@ def axis_cubed_over_period_squared(
         return value, None
     u = regular_from_elements(elements, uncertainty.reference_epoch)
     gradient: FloatArray = axis_and_period_gradient(u)
-    return value, value * float(np.sqrt(gradient @ uncertainty.covariance @ gradient))
+    return value, value * float(np.sqrt(max(gradient @ uncertainty.covariance @ gradient, 0.0)))

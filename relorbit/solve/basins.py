@@ -9,12 +9,12 @@ from numpy.typing import NDArray
 
 from relorbit.orbit.elements import projection_from_constants
 from relorbit.orbit.kepler import TWO_PI, FloatArray
+from relorbit.solve.holding import Holding
 from relorbit.solve.linear import SkyData, fit_constants, sky_data
 from relorbit.solve.observations import Observations
 from relorbit.solve.refine import (
     HIGHEST_E,
     LARGEST_STEP,
-    Holding,
     Problem,
     Refined,
     covariance,
@@ -30,7 +30,9 @@ ALWAYS_FOLLOWED = 10, 4  # best orbits that go on whatever their chi2, at first 
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
 CLOSE = 0.15  # error of theta (radians) beyond which the side of the primary is uncertain
-SPREAD_ORBITS, SPREAD = 2, (-4.0, -2.0, 2.0, 4.0)  # orbits spread from, in standard deviations
+SPREAD_ORBITS = 1  # orbits that starts are spread around
+WIDE, NARROW = (-4.0, -2.0, 2.0, 4.0), (-4.0, 4.0)  # how far, in standard deviations
+BRANCHES = 8  # of the orbits so found, those that are followed to the end
 SAME = 1e-4  # orbits whose coordinates differ by less than this, in units of their size, are one
 
 
@@ -140,23 +142,26 @@ def _both_sides(
     few standard deviations of one another, so starts are spread around what fits x and y, and
     once more around the best that is found.
     """
-    starts = np.concatenate([u, *(_spread(sky, one, held) for one in u[:SPREAD_ORBITS])])
-    first = refine(polar, starts, held, LATER_STEPS, 1e-2, on_step=on_step)
+    starts = np.concatenate([u, *(_spread(sky, one, held, WIDE) for one in u[:SPREAD_ORBITS])])
+    first = refine(polar, starts, held, FIRST_STEPS, 1e-2, on_step=on_step)
     best = first.u[np.argmin(first.chi2)]
-    second = refine(polar, _spread(polar, best, held), held, LATER_STEPS, 1e-2, on_step=on_step)
+    around = _spread(polar, best, held, NARROW)
+    second = refine(polar, around, held, FIRST_STEPS, 1e-2, on_step=on_step)
     every, chi2 = np.concatenate([first.u, second.u]), np.append(first.chi2, second.chi2)
     keep = _distinct(every, chi2)
-    return every[keep[: len(u) + ALWAYS_FOLLOWED[1]]]
+    return every[keep[: len(u) + BRANCHES]]
 
 
-def _spread(problem: Problem, u: FloatArray, held: Holding) -> FloatArray:
-    """Orbits two and four standard deviations from u, shape (7,), along each principal axis."""
+def _spread(
+    problem: Problem, u: FloatArray, held: Holding, scales: tuple[float, ...]
+) -> FloatArray:
+    """Orbits some standard deviations from u, shape (7,), along each principal axis."""
     matrix = covariance(problem, u, held)
     size = np.sqrt(np.diag(matrix))
     size = np.where(size > 0.0, size, 1.0)
     share, axes = np.linalg.eigh(matrix / np.outer(size, size))
     steps = (axes * np.sqrt(np.maximum(share, 0.0))).T * size
-    spread = u + np.concatenate([scale * steps for scale in SPREAD])
+    spread = u + np.concatenate([scale * steps for scale in scales])
     sound = np.all(np.isfinite(spread), axis=1) & (np.hypot(spread[:, 1], spread[:, 2]) < HIGHEST_E)
     return spread[sound & (np.abs(spread[:, 0] - u[0]) < LARGEST_STEP)]
 
@@ -175,7 +180,7 @@ def _distinct(u: FloatArray, chi2: FloatArray) -> NDArray[np.intp]:
     """Indices of orbits that differ from every better one, in rising order of chi2."""
     order = np.argsort(chi2, kind="stable")
     order = order[np.isfinite(chi2[order])]
-    size = np.abs(u[:, 3:]).max(axis=1, keepdims=True)
+    size = np.maximum(np.abs(u[:, 3:]).max(axis=1, keepdims=True), 1e-300)
     scaled = np.concatenate([u[:, :3], u[:, 3:] / size, np.log(size)], axis=1)
     kept: list[int] = []
     for index in order:

@@ -8,12 +8,13 @@ import numpy as np
 
 from relorbit.orbit.kepler import TWO_PI, FloatArray
 from relorbit.solve.basins import orbits_at
+from relorbit.solve.holding import Holding
 from relorbit.solve.linear import sky_data, solve_scaled
 from relorbit.solve.observations import Observations
 from relorbit.solve.refine import Problem, Refined, covariance, polar_problem, refine, sky_problem
 from relorbit.solve.search import search
 
-PROFILE_POINTS = 24
+PROFILE_POINTS = 48
 PROFILE_STEPS = 25
 VAGUE_PERIOD = 0.25  # error of ln P above which the valley of chi2 is too bent to be followed
 FOLLOW_STEP = 0.3  # in ln P, when an orbit is followed to longer periods
@@ -129,7 +130,9 @@ class PeriodProfile:
         if first == 0:
             return float(self.P[0])
         # where the profile crosses the limit, in ln P
-        share = (rise[first - 1] - TWO_SIGMA) / max(rise[first - 1] - rise[first], 1e-300)
+        # chi2 is nearly a parabola there, and its root a straight line
+        high, low = np.sqrt(np.maximum(rise[first - 1 : first + 1], 0.0))
+        share = (high - np.sqrt(TWO_SIGMA)) / max(high - low, 1e-300)
         log_P = np.log(self.P[first - 1 : first + 1])
         return float(np.exp(log_P[0] + share * (log_P[1] - log_P[0])))
 
@@ -150,27 +153,30 @@ def period_profile(observations: Observations) -> PeriodProfile:
 
 
 def rise_at_long_periods(
-    observations: Observations, t0: float, orbits: Refined, scale: float
+    observations: Observations, t0: float, orbits: Refined, scale: float, held: Holding
 ) -> float:
     """By how much (scaled) chi2 rises towards the longest periods; infinity beyond two sigma.
 
     Where the period of the best orbit is vague the whole profile is computed. Else every orbit
     in `orbits` that fits within two standard deviations of the best is followed to longer
     periods, the other unknowns refitted at each step, until chi2 has risen too far or the end of
-    the profile is reached.
+    the profile is reached. Held elements, P not among them, keep their values.
     """
     problem = polar_problem(observations, t0)
     best = float(orbits.chi2[0])
     limit = best + TWO_SIGMA * scale
-    if scale * covariance(problem, orbits.u[0])[0, 0] > VAGUE_PERIOD**2:
+    vague = scale * covariance(problem, orbits.u[0], held)[0, 0] > VAGUE_PERIOD**2
+    if vague and not held.values:
         end = period_profile(observations).chi2[-3:].min()
     else:
         near = orbits.u[orbits.chi2 < limit]
-        end = min(_chi2_at_the_end(problem, u, limit, observations.span) for u in near)
+        end = min(_chi2_at_the_end(problem, u, limit, observations.span, held) for u in near)
     return float(max(end - best, 0.0) / scale) if end < limit else np.inf
 
 
-def _chi2_at_the_end(problem: Problem, u: FloatArray, limit: float, span: float) -> float:
+def _chi2_at_the_end(
+    problem: Problem, u: FloatArray, limit: float, span: float, held: Holding
+) -> float:
     end = np.log(PROFILE_LONGEST * span)
     chi2 = np.inf
     while u[0] < end:
@@ -182,7 +188,11 @@ def _chi2_at_the_end(problem: Problem, u: FloatArray, limit: float, span: float)
         e = np.hypot(u[1], u[2])
         if e >= 0.999:
             u[1:3] *= 0.999 / e
-        settled = refine(problem, u, None, 2 * PROFILE_STEPS, 1e-2, columns=slice(1, 7))
+        if held.values:
+            now = Holding({**held.values, "P": float(np.exp(u[0]))})
+            settled = refine(problem, u, now, 2 * PROFILE_STEPS, 1e-2)
+        else:
+            settled = refine(problem, u, None, 2 * PROFILE_STEPS, 1e-2, columns=slice(1, 7))
         u, chi2 = settled.u[0], float(settled.chi2[0])
         if chi2 > limit:
             return np.inf

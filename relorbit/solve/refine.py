@@ -1,28 +1,23 @@
 """Nonlinear least squares on (theta, rho), one orbit or many at a time.
 
 The unknowns are the regular coordinates of `relorbit.orbit.regular`, the Jacobian is exact, and
-the step is that of Levenberg (1944) and Marquardt (1963, J. SIAM 11, 431). Held elements are kept by stepping in the directions that do not
-change them, and putting them back to their values after each step.
+the step is that of Levenberg (1944) and Marquardt (1963, J. SIAM 11, 431). Held elements are kept
+by stepping in the directions that do not change them, and putting them back to their values after
+each step.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field, replace
+from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from relorbit.orbit.elements import NAMES, Elements
 from relorbit.orbit.kepler import TWO_PI, FloatArray
 from relorbit.orbit.partials import polar_derivatives
-from relorbit.orbit.regular import (
-    SIZE,
-    campbell_jacobian,
-    elements_from_regular,
-    position_and_jacobian,
-    regular_from_elements,
-)
+from relorbit.orbit.regular import SIZE, position_and_jacobian
+from relorbit.solve.holding import Holding
 from relorbit.solve.linear import SkyData, solve_scaled
 from relorbit.solve.observations import Observations
 
@@ -88,81 +83,6 @@ def sky_problem(data: SkyData, reference_epoch: float) -> Problem:
         return standardised(data.z - z), standardised(dz)
 
     return Problem(reference_epoch, with_jacobian)
-
-
-@dataclass(frozen=True)
-class Holding:
-    """Elements that keep given values during a fit.
-
-    Attributes
-    ----------
-    values : dict
-        Any of P, T, e, a, i, node, omega, in the units of `Elements`.
-    """
-
-    values: Mapping[str, float] = field(default_factory=dict)
-
-    def __post_init__(self) -> None:
-        unknown = set(self.values) - set(NAMES)
-        if unknown:
-            raise ValueError(f"no element is called {sorted(unknown)[0]}; use {', '.join(NAMES)}")
-
-    @property
-    def free(self) -> int:
-        """Number of unknowns left."""
-        held = set(self.values)
-        circular, face_on = self.values.get("e") == 0.0, self.values.get("i") in (0.0, 180.0)
-        # a circle has no periastron and a face-on orbit no node: one unknown less each
-        return SIZE - len(
-            held | ({"omega"} if circular else set()) | ({"node"} if face_on else set())
-        )
-
-    def put_back(self, u: FloatArray, reference_epoch: float) -> FloatArray:
-        """u, shape (c, 7), with the held elements at their values."""
-        if not self.values:
-            return u
-        out = np.empty_like(u)
-        for row, one in enumerate(u):
-            elements = elements_from_regular(one, reference_epoch)
-            out[row] = regular_from_elements(self.on(elements), reference_epoch)
-        return out
-
-    def on(self, elements: Elements) -> Elements:
-        """`elements` with the held ones at their values."""
-        changed = dict(self.values)
-        if (
-            "node" in changed
-            and abs((elements.node - changed["node"] + 90.0) % 360.0 - 90.0) > 90.0
-        ):
-            # the fit names a node in [0, 180): the held one may be the other
-            changed.setdefault("omega", elements.omega + 180.0)
-        if changed.get("e") == 0.0 and "omega" not in changed:
-            # keep the place on the circle: count it from the node
-            shift = elements.omega / 360.0 * elements.P
-            changed.setdefault("T", elements.T - shift)
-            changed["omega"] = 0.0
-        return replace(elements, **changed)
-
-    def directions(self, u: FloatArray, reference_epoch: float) -> FloatArray | None:
-        """Orthonormal directions, shape (c, 7, free), along which no held element changes."""
-        if not self.values:
-            return None
-        return np.stack([self._directions(one, reference_epoch) for one in u])
-
-    def _directions(self, u: FloatArray, reference_epoch: float) -> FloatArray:
-        held = set(self.values)
-        by_u = campbell_jacobian(u, reference_epoch)
-        rows = []
-        for name in held:
-            if name == "e" and self.values["e"] == 0.0:
-                rows.extend(np.eye(SIZE)[1:3])
-            elif name == "i" and self.values["i"] in (0.0, 180.0):
-                rows.extend(np.eye(SIZE)[5:7] if self.values["i"] == 0.0 else np.eye(SIZE)[3:5])
-            else:
-                rows.append(by_u[NAMES.index(name)])
-        constraints = np.nan_to_num(np.array(rows))
-        constraints /= np.maximum(np.linalg.norm(constraints, axis=1, keepdims=True), 1e-300)
-        return np.linalg.qr(constraints.T, mode="complete")[0][:, len(rows) :]
 
 
 @dataclass(frozen=True)

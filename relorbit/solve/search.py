@@ -202,9 +202,10 @@ def _gain(spectra: NDArray, kernels: NDArray) -> NDArray:
     ridge = 8.0 * np.finfo(a11.dtype).eps
     scale = a11 * a22
     scale *= 1.0 + ridge
+    least = scale * ridge
     scale -= a12 * a12
-    scale += np.finfo(a11.dtype).tiny
-    np.reciprocal(scale, out=scale)
+    # where A is singular to rounding nothing is gained
+    scale = np.divide(1.0, scale, out=np.zeros_like(scale), where=scale > least)
     i11, i12, i22 = (
         a22 * scale,
         a12 * scale,

@@ -123,7 +123,10 @@ class Solution:
         out: dict[str, float | None] = {}
         for slot, name in enumerate(NAMES):
             value = float(np.sqrt(self._covariance[slot, slot])) * scale
-            out[name] = value if np.isfinite(value) and name not in self.held else None
+            # an angle unknown by more than half a turn is not known at all, nor such a T
+            most = {"T": 0.5 * self.elements.P, "node": 90.0, "omega": 180.0, "i": 90.0}
+            known = np.isfinite(value) and value <= most.get(name, np.inf)
+            out[name] = value if known and name not in self.held else None
         return out
 
     def to_record(

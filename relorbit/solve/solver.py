@@ -18,6 +18,7 @@ from relorbit.orbit.regular import (
 )
 from relorbit.orbit.third_law import TotalMass, total_mass
 from relorbit.solve.basins import LAST_STEPS, find_basins
+from relorbit.solve.holding import Holding
 from relorbit.solve.limits import (
     ONE_SIGMA,
     TWO_SIGMA,
@@ -28,7 +29,7 @@ from relorbit.solve.limits import (
     straight_motion,
 )
 from relorbit.solve.observations import Observations, observe
-from relorbit.solve.refine import Holding, Refined, covariance, polar_problem, refine
+from relorbit.solve.refine import Refined, covariance, polar_problem, refine
 from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Alternative, Notice, Solution
 from relorbit.solve.warnings import gather
@@ -80,13 +81,13 @@ def solve(
         `known` what they do say (a lower limit of the period, the motion).
     """
     held = _holding(hold)
-    observations = observe(pair.measures, epoch_range)
+    epochs, periods = _range(epoch_range, "epochs"), _range(period_range, "periods")
+    observations = observe(pair.measures, epochs)
     _enough(observations, held)
-    t0, orbits = find_basins(observations, held, _period_range(period_range), on_progress)
-    open_period = None
-    if not held.values:
-        scale = max(1.0, float(orbits.chi2[0]) / (observations.numbers - held.free))
-        open_period = _determined(observations, orbits, scale, t0)
+    t0, orbits = find_basins(observations, held, periods, on_progress)
+    if periods is not None:
+        orbits = _within(orbits, periods)
+    open_period = _determined(observations, orbits, held, t0)
     found = [open_period] if open_period else []
     return _solution(pair, observations, held, t0, orbits, passage_near, found)
 
@@ -104,7 +105,7 @@ def refine_from(
     asked, the errors then say it.
     """
     held = _holding(hold)
-    observations = observe(pair.measures, epoch_range)
+    observations = observe(pair.measures, _range(epoch_range, "epochs"))
     _enough(observations, held)
     t0 = observations.mean_epoch
     problem = polar_problem(observations, t0)
@@ -206,16 +207,31 @@ def _holding(hold: Mapping[str, Any] | None) -> Holding:
     return Holding({name: checked[name] for name in hold})
 
 
-def _period_range(period_range: tuple[float, float] | None) -> tuple[float, float] | None:
-    if period_range is None:
+def _range(ends: tuple[float, float] | None, what: str) -> tuple[float, float] | None:
+    if ends is None:
         return None
-    shortest, longest = (float(value) for value in period_range)
-    if not 0.0 < shortest < longest < np.inf:
+    low, high = (float(value) for value in ends)
+    least = 0.0 if what == "periods" else -np.inf
+    if not least < low < high < np.inf:
+        above = ", above 0," if what == "periods" else ""
         raise InputError(
-            f"the periods {shortest:g} to {longest:g} years are not a range; give the shortest, "
-            "above 0, and then a longer one"
+            f"the {what} {low:g} to {high:g} years are not a range; give the lower end{above} and "
+            "then a higher one"
         )
-    return shortest, longest
+    return low, high
+
+
+def _within(orbits: Refined, periods: tuple[float, float]) -> Refined:
+    """Those orbits whose period is in the range that was asked for."""
+    P = np.exp(orbits.u[:, 0])
+    keep = (periods[0] <= P) & (periods[1] >= P)
+    if not keep.any():
+        raise Undetermined(
+            f"no orbit with a period of {periods[0]:g} to {periods[1]:g} years is a minimum of "
+            f"chi2: from there the fit leads to {P[0]:.4g} years. Ask for a wider range.",
+            code="no-orbit-in-range",
+        )
+    return Refined(orbits.u[keep], orbits.chi2[keep], orbits.at_rest[keep], orbits.iterations)
 
 
 def _enough(o: Observations, held: Holding) -> None:
@@ -246,30 +262,39 @@ def _enough(o: Observations, held: Holding) -> None:
             "determined. Measure some separations.",
             code="too-few-positions",
         )
+    if not np.any(o.rho[o.per_rho > 0.0] > 0.0):
+        raise Undetermined(
+            "every separation is 0: the pair was never resolved, and has no orbit to find. Measure "
+            "it when it is wider.",
+            code="never-resolved",
+        )
 
 
 def _count(number: int, word: str) -> str:
     return f"{number} {word}{'' if number == 1 else 's'}"
 
 
-def _determined(o: Observations, orbits: Refined, scale: float, t0: float) -> Notice | None:
+def _determined(o: Observations, orbits: Refined, held: Holding, t0: float) -> Notice | None:
     """Refuse an orbit where a straight line, or any long period, does as well.
 
     Returns a warning where long periods are only worse by less than two standard deviations.
     """
     best = float(orbits.chi2[0])
+    scale = max(1.0, best / (o.numbers - held.free))
     line = straight_motion(o)
-    if (line.chi2 - best) / scale < CURVATURE:
+    if line.chi2 - best < CURVATURE * scale:
         profile = period_profile(o)
         raise Undetermined(
             "a straight line fits as well as an orbit "
-            f"(chi2 {line.chi2:.1f} with 4 unknowns, {best:.1f} with {SIZE}): no curvature is "
+            f"(chi2 {line.chi2:.1f} with 4 unknowns, {best:.1f} with {held.free}): no curvature is "
             f"shown yet. {_limit_text(profile, best, scale)} Measure again when the pair has moved "
             "on, or with smaller errors.",
             code="straight-line",
             known=_known(o, orbits, t0, line, profile, scale),
         )
-    rise = rise_at_long_periods(o, t0, orbits, scale)
+    if "P" in held.values:
+        return None
+    rise = rise_at_long_periods(o, t0, orbits, scale, held)
     if rise >= TWO_SIGMA:
         return None
     profile = period_profile(o)

@@ -23,7 +23,7 @@ from relorbit.measures.store import pair_text, read_pair
 
 ROOT = Path(__file__).resolve().parents[2]
 TICK_S = 2.0  # how often a window calls `Session.tick`
-ROUND_S = 0.1  # what one round lasts on the clock that does not wait
+ROUND_S = 0.25  # what one round lasts on the clock that does not wait
 MEASURES = 60
 
 
@@ -57,7 +57,7 @@ def series(folder: Path, kills: int, seed: int, speed: float = 0.0) -> list[Outc
     folder : Path
         An empty folder.
     speed : float
-        How fast the desk's clock runs; 0 for one that does not wait, 0.1 s a round.
+        How fast the desk's clock runs; 0 for one that does not wait, 0.25 s a round.
     """
     rng = np.random.default_rng(seed)
     path, config = pair_file(folder, MEASURES), folder / "config"
@@ -65,7 +65,7 @@ def series(folder: Path, kills: int, seed: int, speed: float = 0.0) -> list[Outc
     outcomes = []
     for life in range(kills):
         log = folder / f"life_{life}.log"
-        longest = 30.0 / speed if speed else 0.6
+        longest = 30.0 / speed if speed else 1.0
         _live_and_die(path, config, log, seed + life, speed, rng.uniform(0.0, longest))
         outcomes.append(_look(path, config, log, states))
     return outcomes

@@ -7,9 +7,11 @@ import tempfile
 import time
 import tkinter as tk
 from collections.abc import Callable, Iterator
+from tkinter import ttk
 
 import numpy as np
 
+from relorbit.desk.dialogs import Dialog, Form
 from relorbit.desk.settings import Settings
 from relorbit.desk.window import Desk
 from relorbit.measures.pair import Pair
@@ -69,3 +71,58 @@ def settle(
 def dialogs(desk: Desk) -> list[tk.Toplevel]:
     """Windows that are open over the desk."""
     return [child for child in desk.root.winfo_children() if isinstance(child, tk.Toplevel)]
+
+
+def press(desk: Desk, key: str) -> None:
+    """Press a key in the table, and let the window follow."""
+    desk.table.tree.focus_force()
+    desk.root.update()
+    desk.table.tree.event_generate(f"<{key}>")
+    settle(desk, 0.05)
+
+
+def typed(desk: Desk, field: ttk.Entry, text: str) -> None:
+    """Type into a field and press Return."""
+    field.focus_force()
+    field.delete(0, "end")
+    field.insert(0, text)
+    field.event_generate("<Return>")
+    settle(desk, 0.05)
+
+
+def answer(
+    desk: Desk,
+    button: str,
+    then: Callable[[Form], object] | None = None,
+    **fields: str,
+) -> list[str]:
+    """Answer the next dialog: fill in fields, press a button.
+
+    A form that stays open is handed to `then` and left by Escape. Returns a list that the words
+    of the dialog will be put into.
+    """
+    said: list[str] = []
+
+    def look() -> None:
+        waiting = [one for one in dialogs(desk) if isinstance(one, Dialog)]
+        if not waiting or not waiting[-1].winfo_viewable():
+            desk.root.after(20, look)
+            return
+        dialog = waiting[-1]
+        said.extend(_words(dialog)[:1])
+        for name, text in fields.items():
+            dialog.widgets[name].delete(0, "end")
+            dialog.widgets[name].insert(0, text)
+        buttons = {one["text"]: one for one in dialog.default.master.winfo_children()}
+        buttons[button].invoke()
+        if dialog.winfo_exists():
+            if then is not None:
+                then(dialog)
+            dialog.leave()
+
+    desk.root.after(20, look)
+    return said
+
+
+def _words(dialog: Dialog) -> list[str]:
+    return [one["text"] for one in dialog.inner.winfo_children() if isinstance(one, ttk.Label)]
