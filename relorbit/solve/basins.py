@@ -26,10 +26,10 @@ from relorbit.solve.search import ECCENTRICITIES, period_grid, search
 
 STARTS = 32  # minima of the map that are followed down
 FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 100
-ALWAYS_FOLLOWED = 10, 4  # best orbits that go on whatever their chi2, at first and at last
+ALWAYS_FOLLOWED = 6, 4  # best orbits that go on whatever their chi2, at first and at last
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
-CLOSE = 0.15  # error of theta (radians) beyond which the side of the primary is uncertain
+CLOSE = 0.3  # error of theta (radians) beyond which the side of the primary is uncertain
 SPREAD_ORBITS = 1  # orbits that starts are spread around
 WIDE, NARROW = (-4.0, -2.0, 2.0, 4.0), (-4.0, 4.0)  # how far, in standard deviations
 BRANCHES = 8  # of the orbits so found, those that are followed to the end

@@ -17,6 +17,7 @@ from relorbit.solve.search import search
 PROFILE_POINTS = 48
 PROFILE_STEPS = 25
 VAGUE_PERIOD = 0.25  # error of ln P above which the valley of chi2 is too bent to be followed
+SURE_PERIOD = 0.02  # error of ln P below which chi2 has risen too far long before the end
 FOLLOW_STEP = 0.3  # in ln P, when an orbit is followed to longer periods
 PROFILE_SHORTEST, PROFILE_LONGEST = 0.5, 300.0  # in units of the time span
 ONE_SIGMA = 1.0  # rise of (scaled) chi2 up to which any long period does as well as the best
@@ -170,7 +171,12 @@ def rise_at_long_periods(
         end = period_profile(observations).chi2[-3:].min()
     else:
         near = orbits.u[orbits.chi2 < limit]
-        end = min(_chi2_at_the_end(problem, u, limit, observations.span, held) for u in near)
+        end = min(
+            np.inf
+            if scale * covariance(problem, u, held)[0, 0] < SURE_PERIOD**2
+            else _chi2_at_the_end(problem, u, limit, observations.span, held)
+            for u in near
+        )
     return float(max(end - best, 0.0) / scale) if end < limit else np.inf
 
 

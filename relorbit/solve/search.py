@@ -28,6 +28,7 @@ RESOLUTION = ((0.55, 64), (0.85, 128), (1.0, BINS))
 BLOCK = 64  # periods at a time: bounds the memory
 ALWAYS_DOUBLE = 0.7  # periods above this many time spans are searched in double precision
 POINTS = 2000  # more measures than this are first added up in this many bins of time
+EPOCHS_EACH = 4.0  # distinct epochs a revolution needs to be searched for
 MOST_REVOLUTIONS = 40.0  # shortest period searched, as revolutions within the span
 
 
@@ -72,13 +73,13 @@ def period_grid(
     span : float
         Years from the first to the last measure.
     distinct : int
-        Number of distinct epochs: with less than about two for each revolution there is no
-        telling one period from another, so the shortest period is 2.5 span / distinct, with
-        `MOST_REVOLUTIONS` within the span at the most.
+        Number of distinct epochs: with few for each revolution there is no telling one period
+        from another, so the shortest period has four of them, with 5 to `MOST_REVOLUTIONS`
+        revolutions within the span.
     period_range : (float, float), optional
         Shortest and longest period instead.
     """
-    shortest = span / min(max(5.0, 0.4 * distinct), MOST_REVOLUTIONS)
+    shortest = span / min(max(5.0, distinct / EPOCHS_EACH), MOST_REVOLUTIONS)
     longest = LONGEST * span
     if period_range is not None:
         shortest, longest = period_range

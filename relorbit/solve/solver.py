@@ -60,8 +60,8 @@ def solve(
     epoch_range : (float, float), optional
         Julian years; measures outside are not fitted.
     period_range : (float, float), optional
-        Shortest and longest period to search, Julian years. By default from 2.5 time spans
-        divided by the number of epochs (not below a fortieth of the span) to 100 time spans.
+        Shortest and longest period to search, Julian years. By default from four epochs
+        to a revolution (not below a fortieth of the time span) to 100 time spans.
     passage_near : float, optional
         Julian year; T is the passage nearest to it instead of the weighted mean epoch.
     on_progress : callable, optional
