@@ -57,6 +57,7 @@ class Desk:
         self.root.report_callback_exception = self._fault
         self._faulty = False
         self._closing = False
+        self._waiting: dict[str, str] = {}
         self._welcoming = True
         set_scaling(self.root, self.settings.scale or 1.0)
         self.sizes = Sizes(self.root)
@@ -166,9 +167,8 @@ class Desk:
         root.minsize(min(sizes(760), wide), min(sizes(500), high))
         root.protocol("WM_DELETE_WINDOW", self.close)
         root.deiconify()
-        root.after(POLL, self._poll)
-        root.after(TICK, self._tick)
-        root.after(WATCH, self._watch)
+        for milliseconds, call in ((POLL, self._poll), (TICK, self._tick), (WATCH, self._watch)):
+            self._again(milliseconds, call)
 
     def show_desk(self) -> None:
         """Put the parts of a pair in the place of the welcome."""
@@ -317,11 +317,8 @@ class Desk:
         return True
 
     def _poll(self) -> None:
-        if self._closing:
-            return
-        self.root.after(POLL, self._poll)
-        busy = self.worker.busy
-        if busy:
+        self._again(POLL, self._poll)
+        if self.worker.busy:
             self.bench.progress(self.worker.share)
             try:
                 self.worker.poll()
@@ -331,16 +328,18 @@ class Desk:
                     self.commands.refresh()
 
     def _tick(self) -> None:
-        if not self._closing:
-            self.root.after(TICK, self._tick)
-            words = self.session.tick(time.monotonic())
-            if words:
-                self.say(words, warn=True)
+        self._again(TICK, self._tick)
+        words = self.session.tick(time.monotonic())
+        if words:
+            self.say(words, warn=True)
 
     def _watch(self) -> None:
-        if not self._closing:
-            self.root.after(WATCH, self._watch)
-            self.files.watch()
+        self._again(WATCH, self._watch)
+        self.files.watch()
+
+    def _again(self, milliseconds: int, call: Callable[[], None]) -> None:
+        """Call it once more in a while, until the window closes."""
+        self._waiting[call.__name__] = self.root.after(milliseconds, call)
 
     def _fault(self, kind: type, fault: BaseException, trace: TracebackType | None) -> None:
         """A fault of our own: written down, said once, and the window lives on."""
@@ -366,6 +365,8 @@ class Desk:
 
     def _end(self) -> None:
         self._closing = True
+        for waiting in self._waiting.values():
+            self.root.after_cancel(waiting)
         self.settings.geometry = self.root.winfo_geometry()
         self.settings.orientation = self.model.orientation
         if not self._welcoming:

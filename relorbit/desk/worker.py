@@ -108,6 +108,8 @@ class Worker:
                 self.share = content
                 continue
             on_done, self.label, self._on_done = self._on_done, None, None
+            if self._stop.is_set():  # it was done before it heard of the cancel
+                content = Outcome(content.label, cancelled=True)
             if on_done is not None:
                 on_done(content)
 

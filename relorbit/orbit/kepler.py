@@ -55,33 +55,32 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
     e > 0.5 take a path of their own, where E - sin E is a series. The number of operations is
     fixed, and every one runs over a whole block.
     """
-    mean, ecc = np.broadcast_arrays(
-        np.asarray(mean_anomaly, dtype=np.float64), np.asarray(e, dtype=np.float64)
-    )
+    mean, ecc = np.asarray(mean_anomaly, dtype=np.float64), np.asarray(e, dtype=np.float64)
+    one = ecc.item() if ecc.ndim == 0 else None
+    if one is None:
+        mean, ecc = np.broadcast_arrays(mean, ecc)
     shape = mean.shape
     mean, ecc = mean.reshape(-1), ecc.reshape(-1)
-    result = np.empty(mean.size)
-    small = np.empty(mean.size, dtype=bool)
+    if not (ecc.size == 0 or (ecc.min() >= 0.0 and ecc.max() < 1.0)):
+        raise ValueError("the eccentricity must lie in 0 <= e < 1")
     size = min(BLOCK, mean.size)
+    result, small = np.empty(mean.size), np.empty(mean.size, dtype=bool)
     double, single = np.empty((5, size)), np.empty((10, size), dtype=np.float32)
-    table = _table(float(ecc[0])) if mean.size <= BLOCK and np.ndim(e) == 0 and mean.size else None
+    table = None if one is None or mean.size > BLOCK else TABLE_E - one * TABLE_SINE
     for start in range(0, mean.size, BLOCK):
         part = slice(start, start + BLOCK)
         width = min(BLOCK, mean.size - start)
         rooms = double[:, :width], single[:, :width]
-        _solve_block(mean[part], ecc[part], result[part], small[part], *rooms, table)
-    which = np.flatnonzero(small)
-    if which.size:
+        e_part = ecc[part] if one is None else one
+        _solve_block(mean[part], e_part, result[part], small[part], *rooms, table)
+    if small.any():
+        which = np.flatnonzero(small)
         full = mean[which]
         reduced = _reduced(full)
-        inner = np.copysign(_near_periastron(np.abs(reduced), ecc[which]), reduced)
+        e_part = ecc[which] if one is None else one
+        inner = np.copysign(_near_periastron(np.abs(reduced), e_part), reduced)
         result[which] = inner + (full - reduced)
     return result.reshape(shape)
-
-
-def _table(e: float) -> FloatArray:
-    """M at every E of `TABLE_E`, from which starting values for one e are interpolated."""
-    return TABLE_E - e * TABLE_SINE
 
 
 def _reduced(mean: FloatArray) -> FloatArray:
@@ -98,7 +97,7 @@ def _reduced(mean: FloatArray) -> FloatArray:
 
 def _solve_block(
     mean: FloatArray,
-    e: FloatArray,
+    e: FloatArray | float,
     anomaly: FloatArray,
     small: NDArray[np.bool_],
     double: FloatArray,
@@ -111,11 +110,9 @@ def _solve_block(
     """
     m, gap, sine, slope, step = double
     np.abs(mean, out=m)
-    largest = np.max(m)
+    largest = m.max()
     if not np.isfinite(largest):
         raise ValueError("the mean anomaly must be finite")
-    if not (np.min(e) >= 0.0 and np.max(e) < 1.0):
-        raise ValueError("the eccentricity must lie in 0 <= e < 1")
     reduced = mean if largest <= np.pi else _reduced(mean)
     np.abs(reduced, out=m)
     np.subtract(1.0, e, out=gap)
@@ -154,7 +151,7 @@ def _solve_block(
 
 
 def _starter(
-    mean: FloatArray, ecc: FloatArray, one_minus_e: FloatArray, single: NDArray[np.float32]
+    mean: FloatArray, ecc: FloatArray | float, one_minus_e: FloatArray, single: NDArray[np.float32]
 ) -> NDArray[np.float32]:
     """E to about 1e-6 in single precision; the result stands in a row of `single`.
 
@@ -219,7 +216,7 @@ def _halley_single(
     return anomaly
 
 
-def _near_periastron(m: FloatArray, e: FloatArray) -> FloatArray:
+def _near_periastron(m: FloatArray, e: FloatArray | float) -> FloatArray:
     """E for small E and e > 0.7, to full relative precision."""
     gap = 1.0 - e
     # the cubic (1 - e) E + e E^3 / 6 = m, by Cardano's formula in a form that does not cancel

@@ -106,7 +106,10 @@ def unit_orbit(
     varpi = np.angle(g)
     # a single e is solved for faster than an array of one
     E = eccentric_anomaly(longitude - varpi, e.item() if e.size == 1 else e)
-    U = np.exp(1j * (E + varpi))
+    angle = E + varpi
+    U = np.empty(angle.shape, dtype=complex)
+    np.cos(angle, out=U.real)
+    np.sin(angle, out=U.imag)
     eta = np.sqrt((1.0 - e) * (1.0 + e))
     b = 1.0 / (1.0 + eta)
     turn = (b * g) * np.conj(U)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import faulthandler
 import os
 import shutil
 import subprocess
@@ -12,6 +13,7 @@ from pathlib import Path
 
 import pytest
 
+PATIENCE = 120  # seconds that a test of a window may take
 NO_DISPLAY = "no display and no Xvfb to make one; install xvfb"
 
 
@@ -50,7 +52,10 @@ def desk(display: str) -> Iterator[object]:
         window.root.report_callback_exception = lambda kind, fault, trace: faults.append(fault)
         window.root.geometry("1240x740+0+0")
         window.root.update()
+        # a dialog that nobody answers would wait for ever
+        faulthandler.dump_traceback_later(PATIENCE, exit=True)
         yield window
+        faulthandler.cancel_dump_traceback_later()
         if not window._closing:
             window._end()
         if faults:

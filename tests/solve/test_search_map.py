@@ -98,7 +98,7 @@ def test_periods_are_spaced_by_frequency_within_the_span_and_by_ratio_beyond() -
     periods = period_grid(span, 60)
     assert np.all(np.diff(periods) < 0.0)
     assert periods[0] == pytest.approx(LONGEST * span)
-    assert periods[-1] == pytest.approx(2.5 * span / 60.0)
+    assert periods[-1] == pytest.approx(4.0 * span / 60.0)
     within = periods[periods <= span * (1.0 + 1e-12)]
     assert np.diff(span / within).max() <= 0.0801
     beyond = periods[periods >= span * (1.0 - 1e-12)]
