@@ -80,13 +80,14 @@ def solve(pair: Pair, options: argparse.Namespace) -> Any:
     from relorbit.solve.solver import solve
 
     near = options.passage_near
-    return solve(
-        pair,
-        assignments(options.hold, "--hold"),
-        epoch_range=_range(options.epoch_range, "--epoch-range"),
-        period_range=_range(options.period_range, "--period-range"),
-        passage_near=None if near is None else epoch_from_text(near),
-    )
+    held = assignments(options.hold, "--hold")
+    said = {
+        "epoch_range": _range(options.epoch_range, "--epoch-range"),
+        "period_range": _range(options.period_range, "--period-range"),
+        "passage_near": None if near is None else epoch_from_text(near),
+    }
+    with waiting("solving"):
+        return solve(pair, held, **said)
 
 
 def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:

@@ -48,8 +48,8 @@ def run(options: argparse.Namespace) -> None:
 
     check_format(options.out)
     pair = common.read(options)
+    figure = _figure(options, pair)
     with common.waiting("drawing"):
-        figure = _figure(options, pair)
         save_figure(figure, options.out)
     print(f"drawn: {options.out}")
 

@@ -59,7 +59,7 @@ def run(options: argparse.Namespace) -> None:
         return
     print(ephemeris_table(result))
     print("\n" + turning_points_table(points))
-    print("\nTheta at equinox J2000.")
+    print("\nTheta at equinox J2000. Never point a telescope near the Sun.")
 
 
 def _orbit(options: argparse.Namespace) -> AnyOrbit:

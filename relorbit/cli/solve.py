@@ -40,8 +40,7 @@ def run(options: argparse.Namespace) -> None:
     if options.record is not None:
         require_pair_file(options.pair)
     try:
-        with common.waiting("solving"):
-            solution = common.solve(pair, options)
+        solution = common.solve(pair, options)
     except Undetermined as error:
         if options.json:
             common.print_json(error.to_dict())

@@ -44,8 +44,7 @@ def run(options: argparse.Namespace) -> None:
         raise InputError("a mass needs a parallax; give --parallax in mas", path=options.pair)
     if error is not None and not error > 0.0:
         raise InputError(f"--parallax-err: {error:g} is not above 0; leave it out where unknown")
-    with common.waiting("solving"):
-        orbit = common.orbit(pair, options)
+    orbit = common.orbit(pair, options)
     try:
         budget = mass_budget(orbit, parallax, error)
         parts = options.mass_ratio and component_masses(budget.mass.value, options.mass_ratio)

@@ -12,9 +12,9 @@ from relorbit.errors import Undetermined
 from relorbit.measures.pair import Pair
 from relorbit.orbit.elements import Elements, polar
 from relorbit.solve.basins import find_basins
+from relorbit.solve.holding import Holding
 from relorbit.solve.limits import period_profile, straight_motion
 from relorbit.solve.observations import observe
-from relorbit.solve.holding import Holding
 from relorbit.solve.solver import solve
 
 LONG = Elements(600.0, 2000.0, 0.3, 3.0, 40.0, 60.0, 120.0)
