@@ -125,7 +125,7 @@ def ephemeris(solution_or_elements: AnyOrbit, epochs: ArrayLike) -> Ephemeris:
     u = regular_from_elements(elements, uncertainty.reference_epoch)
     z, dz = position_and_jacobian(u, uncertainty.reference_epoch, epochs)
     theta_sigma, rho_sigma = (
-        np.sqrt(np.einsum("jn,jk,kn->n", part, uncertainty.covariance, part))
+        _root(np.einsum("jn,jk,kn->n", part, uncertainty.covariance, part))
         for part in polar_derivatives(z, dz)
     )
     # an angle known worse than this is not known at all
@@ -196,7 +196,7 @@ def _extremes(elements: Elements, after: float) -> list[tuple[str, float]]:
 def _periastron_sigma(elements: Elements, uncertainty: Uncertainty | None) -> float | None:
     if uncertainty is None:
         return None
-    sigma = float(np.sqrt(campbell_covariance(elements, uncertainty)[1, 1]))
+    sigma = float(_root(campbell_covariance(elements, uncertainty)[1, 1]))
     return sigma if np.isfinite(sigma) else None
 
 
@@ -213,6 +213,13 @@ def _extreme_sigma(
     _, by_u = polar_derivatives(z, dz)
     rho = np.abs(z)
     curvature = (rho[0] - 2.0 * rho[1] + rho[2]) / step**2
+    if curvature == 0.0:
+        return None
     gradient = (by_u[:, 2] - by_u[:, 0]) / (2.0 * step) / curvature
-    sigma = float(np.sqrt(gradient @ uncertainty.covariance @ gradient))
+    sigma = float(_root(gradient @ uncertainty.covariance @ gradient))
     return sigma if np.isfinite(sigma) else None
+
+
+def _root(variance: ArrayLike) -> FloatArray:
+    """The root of a variance; NaN where rounding left one below 0, of what is hardly known."""
+    return np.sqrt(np.where(np.asarray(variance) >= 0.0, variance, np.nan))

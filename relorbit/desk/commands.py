@@ -18,6 +18,7 @@ _SAID = {
 
 
 def always() -> bool:
+    """For commands that can be given at any time."""
     return True
 
 
@@ -155,6 +156,7 @@ class CommandSet:
 
 
 def dress_menu(menu: tk.Menu, palette: Palette) -> None:
+    """A menu in the colours of the window."""
     menu.configure(
         background=palette.ground, foreground=palette.ink, activebackground=palette.accent,
         activeforeground=palette.on_accent, disabledforeground=palette.quiet, relief="flat",

@@ -59,7 +59,7 @@ LIGHT = Palette(
 )  # fmt: skip
 DARK = Palette(
     name="dark", ground="#202327", paper="#15171A", ink="#E8E5DE", quiet="#AAA69E",
-    line="#43484F", accent="#8FBDE6", on_accent="#10151A", chosen="#2A3F54", warn="#F3A688",
+    line="#43484F", accent="#8FBDE6", on_accent="#10151A", chosen="#26394C", warn="#F3A688",
     curve="#D8D4CB", today="#7FCB95",
     edges={"eyepiece": "#F1E8BC", "plate": "#8AD8CB", "camera": "#EDB2BB",
            "interferometer": "#DE96BC", "space": "#A79DEE", "unknown": "#E2E2E2"},

@@ -132,6 +132,7 @@ def quiet(axes: Axes) -> None:
 
 
 def label_axes(axes: Axes, x: str = "", y: str = "") -> None:
+    """Name the axes in the size and colour of all text."""
     axes.set_xlabel(x, fontsize=TEXT, color=INK)
     axes.set_ylabel(y, fontsize=TEXT, color=INK)
 

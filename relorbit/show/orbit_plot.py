@@ -183,6 +183,7 @@ def draw_primary(axes: Axes) -> Line2D:
 
 
 def draw_curve(axes: Axes, elements: Elements) -> Line2D:
+    """The whole ellipse as one line."""
     x, y = place(elements, np.linspace(0.0, TWO_PI, CURVE_POINTS))
     (line,) = axes.plot(x, y, color=CURVE, linewidth=CURVE_WIDTH, zorder=2)
     line.set_gid("orbit")

@@ -122,7 +122,9 @@ class Solution:
     def _sigma(self, scale: float) -> dict[str, float | None]:
         out: dict[str, float | None] = {}
         for slot, name in enumerate(NAMES):
-            value = float(np.sqrt(self._covariance[slot, slot])) * scale
+            variance = self._covariance[slot, slot]
+            # rounding leaves the variance of what is hardly determined below 0
+            value = float(np.sqrt(variance)) * scale if variance >= 0.0 else np.nan
             # an angle unknown by more than half a turn is not known at all, nor such a T
             most = {"T": 0.5 * self.elements.P, "node": 90.0, "omega": 180.0, "i": 90.0}
             known = np.isfinite(value) and value <= most.get(name, np.inf)

@@ -101,7 +101,7 @@ class RandomUser:
         """So many actions, the event loop turning after each."""
         choices: tuple[tuple[Callable[[], None], float], ...] = (
             (self.command, 5), (self.key, 5), (self.point, 4), (self.edit, 4), (self.paste, 1),
-            (self.element, 3), (self.table, 3), (self.undo, 3), (self.look, 2), (self.work, 1.5),
+            (self.element, 3), (self.table, 3), (self.undo, 1.5), (self.look, 2), (self.work, 1.5),
         )  # fmt: skip
         weights = np.array([weight for _, weight in choices])
         with answered_file_dialogs(self):
