@@ -58,7 +58,8 @@ def run(options: argparse.Namespace) -> None:
         common.print_json(content)
         return
     print(ephemeris_table(result))
-    print("\n" + turning_points_table(points))
+    if points:
+        print("\n" + turning_points_table(points))
     print("\nTheta at equinox J2000. Never point a telescope near the Sun.")
 
 

@@ -145,14 +145,16 @@ def turning_points(orbit: AnyOrbit, after: float) -> tuple[TurningPoint, ...]:
     Returns
     -------
     tuple of TurningPoint
-        kinds "periastron", "closest", "widest"; the last two are missing for an orbit whose
-        separation never changes (circular and face-on).
+        kinds "periastron" (not of a circle), "closest", "widest" (not of an orbit whose
+        separation never changes: a circle seen face-on).
     """
     elements, uncertainty = elements_and_uncertainty(orbit)
-    revolutions = np.ceil((after - elements.T) / elements.P)
-    periastron = elements.T + revolutions * elements.P
-    points = [_point("periastron", elements, periastron, _periastron_sigma(
-        elements.near(periastron), uncertainty))]  # fmt: skip
+    points = []
+    if elements.e > 0.0:
+        revolutions = np.ceil((after - elements.T) / elements.P)
+        periastron = elements.T + revolutions * elements.P
+        sigma = _periastron_sigma(elements.near(periastron), uncertainty)
+        points.append(_point("periastron", elements, periastron, sigma))
     points.extend(
         _point(kind, elements, epoch, _extreme_sigma(elements, uncertainty, epoch))
         for kind, epoch in _extremes(elements, after)

@@ -31,8 +31,7 @@ class CellEditor:
         self.field.bind("<Return>", lambda _: self._finish(1))
         self.field.bind("<KP_Enter>", lambda _: self._finish(1))
         self.field.bind("<Tab>", lambda _: self._finish_across(1))
-        self.field.bind("<Shift-Tab>", lambda _: self._finish_across(-1))
-        self.field.bind("<ISO_Left_Tab>", lambda _: self._finish_across(-1))
+        self.field.bind("<<PrevWindow>>", lambda _: self._finish_across(-1))
         self.field.bind("<Escape>", lambda _: self.cancel())
         self.field.bind("<FocusOut>", lambda _: self._left())
 

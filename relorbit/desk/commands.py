@@ -81,6 +81,8 @@ class CommandSet:
         for command in self.all:
             if command.key:
                 root.bind(f"<{command.key}>", self._on_key(command))
+            if len(command.key) == 1 and command.key.isalpha():
+                root.bind(f"<{command.key.upper()}>", self._on_key(command))
 
     def do(self, name: str) -> bool:
         """Do it where it is allowed now; says whether it was."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import tkinter as tk
 from collections.abc import Callable, Mapping, Sequence
+from contextlib import suppress
 from dataclasses import dataclass
 from tkinter import ttk
 
@@ -78,7 +79,7 @@ class Dialog(tk.Toplevel):
         self.grab_set()
         (focus or self.default).focus_set()
         self.wait_window()
-        if owner.winfo_exists():
+        with suppress(tk.TclError):  # the whole window may have been closed meanwhile
             owner.focus_set()
         return self.answer
 

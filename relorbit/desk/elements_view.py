@@ -158,7 +158,9 @@ class ElementsView(ttk.Frame):
         if isinstance(orbit, Solution):
             many = len(orbit.alternatives)
             others = "" if not many else f" {many} other orbit{'s' * (many != 1)} listed below."
-            return f"The best fit, with errors of one standard deviation.{others}"
+            searched = orbit is self.model.state.found
+            fit = "The best fit" if searched else "Refined from what was here"
+            return f"{fit}, with errors of one standard deviation.{others}"
         if isinstance(orbit, RecordedOrbit):
             return f"On record as {orbit.name}."
         return "Not fitted, so without errors: Refine goes on from here."

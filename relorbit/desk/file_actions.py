@@ -55,11 +55,11 @@ class FileActions:
                     button="Read a list\u2026"),
             Command("save", "Save", "File", "Control-s", self.save, d.on_desk),
             Command("save_as", "Save as\u2026", "File", "Control-S", self.save_as, d.on_desk),
-            Command("reload", "Read the file anew", "File", "", self.reload,
+            Command("reload", "Read the file anew", "File", "Control-R", self.reload,
                     lambda: d.model.path is not None),
             Command("figure", "Save a figure\u2026", "File", "Control-g", self.figure, d.has_orbit),
-            Command("save_ephemeris", "Save the ephemeris\u2026", "File", "", self.save_ephemeris,
-                    d.has_orbit, "Save\u2026"),
+            Command("save_ephemeris", "Save the ephemeris\u2026", "File", "Control-E",
+                    self.save_ephemeris, d.has_orbit, "Save\u2026"),
         )  # fmt: skip
 
     # -- opening -------------------------------------------------------------------------------

@@ -32,11 +32,12 @@ CELLS = (
 )
 
 
+AROUND = 260  # pixels at 96 an inch: the rest of the help window, and the screen's own bars
 # three columns of about one height: menus, and lines after them; a line without a key is a title
 COLUMNS = (
-    (("File", "Edit"), (("", "In fields and tables"), *CELLS)),
-    (("Measures", "Orbit", "Help"), ()),
-    (("View",), (("", "With the mouse"), *MOUSE)),
+    (("File", "Edit", "Help"), ()),
+    (("Measures", "Orbit"), ()),
+    (("View",), (("", "With the mouse"), *MOUSE, ("", "In fields and tables"), *CELLS)),
 )
 
 
@@ -47,6 +48,24 @@ def key_list(commands: Iterable[Command]) -> dict[str, list[tuple[str, str]]]:
         if one.key:
             keys[one.menu].append((one.key_label, one.label.rstrip("\u2026")))
     return keys
+
+
+def _hold(window: tk.Canvas, grid: ttk.Frame, most: int) -> None:
+    """Put the columns into their window, with a bar where the screen is too low for all."""
+    grid.update_idletasks()
+    high = grid.winfo_reqheight()
+    window.create_window(0, 0, window=grid, anchor="nw")
+    window.configure(width=grid.winfo_reqwidth(), height=min(high, most),
+                     scrollregion=(0, 0, grid.winfo_reqwidth(), high))  # fmt: skip
+    if high > most:
+        bar = ttk.Scrollbar(window.master, orient="vertical", command=window.yview)
+        window.configure(yscrollcommand=bar.set)
+        bar.pack(side="right", fill="y")
+        for key, units in (("<Button-4>", -1), ("<Button-5>", 1), ("<Up>", -1), ("<Down>", 1)):
+            window.winfo_toplevel().bind(key, lambda _, n=units: window.yview_scroll(n, "units"))
+        window.winfo_toplevel().bind("<MouseWheel>", lambda event: window.yview_scroll(
+            -1 if event.delta > 0 else 1, "units"))  # fmt: skip
+    window.pack(side="left", fill="both", expand=True)
 
 
 def _put_lines(parent: tk.Misc, lines: Iterable[tuple[str, str]], sizes: Sizes) -> None:
@@ -66,14 +85,17 @@ def show_help(parent: tk.Misc, palette: Palette, commands: Iterable[Command]) ->
     sizes = dialog.sizes
     ttk.Label(dialog.inner, text=BEGIN.replace("\n", " "), wraplength=sizes(880),
               justify="left").pack(anchor="w")  # fmt: skip
-    grid = ttk.Frame(dialog.inner)
-    grid.pack(fill="both", expand=True, pady=sizes(8))
+    holder = ttk.Frame(dialog.inner)
+    holder.pack(fill="both", expand=True, pady=sizes(8))
+    window = tk.Canvas(holder, background=palette.ground, highlightthickness=0)
+    grid = ttk.Frame(window)
     keys = key_list(commands)
     for menus, more in COLUMNS:
         part = [line for menu in menus for line in [("", menu), *keys[menu]]] + list(more)
         column = ttk.Frame(grid)
         column.pack(side="left", anchor="n", padx=(0, sizes(14)))
         _put_lines(column, part, sizes)
+    _hold(window, grid, dialog.winfo_screenheight() - sizes(AROUND))
     ttk.Label(dialog.inner, text=CAUTION.replace("\n", " "), style="Quiet.TLabel",
               wraplength=sizes(880), justify="left").pack(anchor="w")  # fmt: skip
     dialog.buttons(("Close",), dialog.press)

@@ -63,7 +63,8 @@ class MeasureActions:
             Command("edit_cell", "Edit the cell", "Measures", "F2", self.edit_cell, there),
             Command("add", "Add a measure\u2026", "Measures", "Insert", self.add, d.on_desk,
                     "Add\u2026"),
-            Command("reduce", "Bring theta to J2000", "Measures", "", self.reduce, self._of_date),
+            Command("reduce", "Bring theta to J2000", "Measures", "Control-j", self.reduce,
+                    self._of_date),
             Command("remove", "Remove rows added by mistake\u2026", "Measures", "Delete",
                     self.remove, some),
         )  # fmt: skip

@@ -43,14 +43,14 @@ class OrbitActions:
                     self.take_up, lambda: d.follows.orbits.chosen is not None, "Work on it"),
             Command("keep", "Keep on record\u2026", "Orbit", "Control-k", self.keep, d.has_orbit,
                     "Keep\u2026"),
-            Command("drop", "Take off the record\u2026", "Orbit", "", self.drop,
+            Command("drop", "Take off the record\u2026", "Orbit", "Control-K", self.drop,
                     lambda: self._recorded() is not None, "Take off"),
             Command("copy_elements", "Copy the elements", "Orbit", "Control-e", self.copy_elements,
                     d.has_orbit),
-            Command("copy_residuals", "Copy the residuals", "Orbit", "", self.copy_residuals,
-                    d.has_orbit),
-            Command("copy_ephemeris", "Copy the ephemeris", "Orbit", "", self.copy_ephemeris,
-                    d.has_orbit, "Copy"),
+            Command("copy_residuals", "Copy the residuals", "Orbit", "Control-C",
+                    self.copy_residuals, d.has_orbit),
+            Command("copy_ephemeris", "Copy the ephemeris", "Orbit", "Control-P",
+                    self.copy_ephemeris, d.has_orbit, "Copy"),
         )  # fmt: skip
 
     # -- fits ----------------------------------------------------------------------------------

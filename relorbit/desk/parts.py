@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import tkinter as tk
 from collections.abc import Sequence
 from tkinter import ttk
@@ -13,6 +14,7 @@ from relorbit.desk.theme import Palette, Sizes
 from relorbit.desk.words import pair_in_words
 
 # share of the room to the left of, or above, each divider
+SEEN = 60  # pixels of a window that must be on the screen
 FOLLOWS = 405  # pixels at 96 an inch that the orbits side by side need
 DIVIDERS = {"upper 0": 0.37, "upper 1": 0.72, "lower 0": 0.6, "rows 0": 0.56}
 
@@ -111,6 +113,17 @@ class Panes(ttk.Frame):
             for at in range(len(panes.panes()) - 1):
                 share = panes.sashpos(at) / self._length(panes)
                 self._settings.panes[f"{which} {at}"] = round(share, 4)
+
+
+def on_screen(root: tk.Misc, geometry: str) -> bool:
+    """Whether a window put there would be seen: the screen may be another one than last time."""
+    numbers = [int(word) for word in re.findall(r"-?[0-9]+", geometry)]
+    if len(numbers) != 4:
+        return False
+    wide, high, x, y = numbers
+    across = max(root.winfo_screenwidth(), root.winfo_vrootwidth())
+    upright = max(root.winfo_screenheight(), root.winfo_vrootheight())
+    return SEEN - wide < x < across - SEEN and -SEEN < y < upright - SEEN and high <= upright
 
 
 class Status(ttk.Frame):

@@ -140,9 +140,8 @@ class StripsView(PlotView):
     def _values(self, of: Residuals) -> dict[Axes, tuple[FloatArray, FloatArray]]:
         """O-C and error of both panels, in the unit of the strips."""
         factor = self._unit[1]
-        across = of.rho_computed * np.radians(of.theta_err)
         return {
-            self.across: (of.arc * factor, across * factor),
+            self.across: (of.arc * factor, of.arc_err * factor),
             self.along: (of.d_rho * factor, of.rho_err * factor),
         }
 

@@ -33,7 +33,7 @@ COLUMNS = (
     ("observer", "observer", 96, "w"),
     ("theta_err", "\u00b1 theta", 58, "e"),
     ("rho_err", "\u00b1 rho", 58, "e"),
-    ("aperture_m", "aperture m", 72, "e"),
+    ("aperture_m", "aperture m", 84, "e"),
     ("nights", "nights", 48, "e"),
     ("weight", "weight", 50, "e"),
     ("reason", "reason", 130, "w"),

@@ -129,11 +129,23 @@ def dress(root: tk.Tk, palette: Palette) -> None:
     _dress_buttons(style, sizes, p)
     _dress_fields(style, sizes, p)
     _dress_lists(style, sizes, p)
-    for option, colour in (
-        ("background", p.paper), ("foreground", p.ink), ("selectBackground", p.accent),
-        ("selectForeground", p.on_accent),
-    ):  # fmt: skip
+    _dress_choices(root, p)
+
+
+def _dress_choices(root: tk.Tk, p: Palette) -> None:
+    """The lists that comboboxes open: those to come, and those there are."""
+    colours_of = {"background": p.paper, "foreground": p.ink, "selectBackground": p.accent,
+                  "selectForeground": p.on_accent}  # fmt: skip
+    for option, colour in colours_of.items():
         root.option_add(f"*TCombobox*Listbox.{option}", colour)
+    waiting: list[tk.Misc] = [root]
+    while waiting:
+        widget = waiting.pop()
+        waiting += widget.winfo_children()
+        if widget.winfo_class() == "TCombobox":
+            opened = root.tk.call("ttk::combobox::PopdownWindow", widget)
+            for option, colour in colours_of.items():
+                root.tk.call(f"{opened}.f.l", "configure", f"-{option.lower()}", colour)
 
 
 def _dress_buttons(style: ttk.Style, sizes: Sizes, p: Palette) -> None:

@@ -21,7 +21,7 @@ from relorbit.desk.help import show_help
 from relorbit.desk.measure_actions import MeasureActions
 from relorbit.desk.model import FILE, ORBIT, PAIR, SELECTION, VIEW, DeskModel
 from relorbit.desk.orbit_actions import OrbitActions
-from relorbit.desk.parts import Bench, Panes, Status
+from relorbit.desk.parts import Bench, Panes, Status, on_screen
 from relorbit.desk.session import EXAMPLES, Session
 from relorbit.desk.settings import LARGEST_SCALE, SMALLEST_SCALE, Settings
 from relorbit.desk.sky_view import SkyView
@@ -85,9 +85,9 @@ class Desk:
         self.commands = CommandSet(self.root, (
             *self.files.commands(),
             Command("quit", "Close", "File", "Control-q", self.close),
-            Command("undo", "Undo", "Edit", "Control-z", model.undo,
+            Command("undo", "Undo", "Edit", "Control-z", self.undo,
                     lambda: model.undo_label is not None, "Undo"),
-            Command("redo", "Redo", "Edit", "Control-y", model.redo,
+            Command("redo", "Redo", "Edit", "Control-y", self.redo,
                     lambda: model.redo_label is not None, "Redo"),
             *self.measures.commands(),
             *self.orbits.commands(),
@@ -163,7 +163,8 @@ class Desk:
         sizes, root = self.sizes, self.root
         wide = min(sizes(1280), root.winfo_screenwidth())
         high = min(sizes(800), root.winfo_screenheight() - sizes(60))  # menu and title bar
-        root.geometry(self.settings.geometry or f"{wide}x{high}")
+        there = on_screen(root, self.settings.geometry)
+        root.geometry(self.settings.geometry if there else f"{wide}x{high}")
         root.minsize(min(sizes(760), wide), min(sizes(500), high))
         root.protocol("WM_DELETE_WINDOW", self.close)
         root.deiconify()
@@ -227,6 +228,14 @@ class Desk:
             return {}
         return {one.name: one.elements for one in self.model.pair.orbits
                 if one.elements != self.model.elements}  # fmt: skip
+
+    def undo(self) -> None:
+        self.say(f"Undone: {self.model.undo_label}.")
+        self.model.undo()
+
+    def redo(self) -> None:
+        self.say(f"Done again: {self.model.redo_label}.")
+        self.model.redo()
 
     # -- the view ------------------------------------------------------------------------------
 

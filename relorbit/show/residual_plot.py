@@ -61,8 +61,7 @@ def draw_residual_panels(across: Axes, along: Axes, residuals: Residuals) -> Non
 
 def draw_residuals_across(axes: Axes, residuals: Residuals) -> None:
     """O-C of theta as arc length."""
-    error = residuals.rho_computed * np.radians(residuals.theta_err)
-    _draw(axes, residuals, residuals.arc, error, "across")
+    _draw(axes, residuals, residuals.arc, residuals.arc_err, "across")
 
 
 def draw_residuals_along(axes: Axes, residuals: Residuals) -> None:

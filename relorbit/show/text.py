@@ -50,6 +50,9 @@ THETA_DECIMALS, RHO_DECIMALS = 2, 4
 UNKNOWN_ANGLE = 180.0  # degrees: an ephemeris error capped here says nothing of the angle
 
 
+NOT_DETERMINED = "not determined"
+
+
 def solution_text(solution: Solution) -> str:
     """The whole of a solution: fit, elements, mass, alternatives, techniques, warnings."""
     parts = [
@@ -100,6 +103,8 @@ def element_rows(
             rows.append((name, f"{value:.10g}", "", "held"))
             continue
         text, spread = _element_value(name, value, error), ""
+        if remark == NOT_DETERMINED:
+            text = significant(value, 2) if name in ("P", "e", "a") else fixed(value, 1)
         if known(error):
             spread = error_text(error)
         rows.append((name, text, spread, remark))
@@ -164,7 +169,7 @@ def _why_no_error(name: str, elements: Elements, sigma: float | None) -> str:
         return "undefined: circular"
     if elements.i in (0.0, 180.0) and name in ("i", "node", "omega"):
         return "as node: face-on" if name == "omega" else "undefined: face-on"
-    return "error unknown"
+    return NOT_DETERMINED
 
 
 def mass_text(solution: Solution) -> str:

@@ -48,6 +48,11 @@ class Residuals:
         return self.epoch.size
 
     @property
+    def arc_err(self) -> FloatArray:
+        """The error of `arc`, arcsec."""
+        return self.rho_computed * np.radians(self.theta_err)
+
+    @property
     def theta_in_sigma(self) -> FloatArray:
         return self.d_theta / self.theta_err
 

@@ -17,6 +17,7 @@ VAGUE = 0.2  # relative error of the period that is worth a warning
 WELL_KNOWN_E = 0.2  # error of e up to which an orbit can be called circular
 VAGUE_NODE = 30.0  # error of the node, degrees, that is worth a warning
 NEARLY_FACE_ON = 60.0  # how far from edge-on, degrees, an orbit is nearly face-on
+WIDE_ERRORS, ENOUGH_DOF = 0.5, 8  # reduced chi2 under which assumed errors are too wide
 HIGHEST_E = 0.999  # beyond this an ellipse is no longer told from a needle
 POOR_FIT = 2.0  # reduced chi2 above which the measures disagree with their own errors
 PLAUSIBLE_MASS = (0.05, 300.0)  # total mass in solar masses: common practice, no published source
@@ -101,6 +102,12 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
             f"{assumed} of {len(o)} measures bring no errors and were given those usual for their "
             "technique",
         )
+    if assumed == len(o) and s.reduced_chi2 < WIDE_ERRORS and s.dof >= ENOUGH_DOF:
+        yield Notice(
+            "wide-errors",
+            f"reduced chi2 is {s.reduced_chi2:.2f}: the measures agree better than the errors "
+            "assumed for them, and the errors given are too large",
+        )
     if s.error_scale > 1.0:
         yield Notice(
             "scaled-errors",
@@ -119,8 +126,8 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
         epochs = ", ".join(f"{epoch:.2f}" for epoch in s.residuals.epoch[wrong_side][:4])
         yield Notice(
             "wrong-side",
-            f"{int(wrong_side.sum())} measures lie on the other side of the primary, perhaps a "
-            f"swapped quadrant: {epochs}",
+            f"on the other side of the primary, perhaps with a swapped quadrant: "
+            f"{int(wrong_side.sum())} measured at {epochs}",
         )
     left = int(np.count_nonzero(pair.measures.equinox[o.rows] != "J2000"))
     if left:

@@ -217,6 +217,15 @@ def test_solving_can_be_cancelled_and_changes_nothing(example: Desk, slow: None)
     assert example.status.label["text"] == "Stopped; nothing was changed."
 
 
+def test_a_cancel_counts_even_when_the_work_was_just_done(example: Desk) -> None:
+    assert example.commands.do("solve")
+    assert example.worker.wait(30.0)
+    assert example.commands.do("stop")
+    settle(example, 5.0, lambda: not example.worker.busy)
+    assert example.model.elements is None
+    assert example.model.undo_label is None
+
+
 def test_closing_in_mid_work_asks_and_ends(example: Desk, slow: None) -> None:
     press(example, "F5")
     said = answer(example, "Let it go on")
@@ -410,7 +419,8 @@ def test_every_command_is_in_a_menu_and_no_key_is_used_twice(desk: Desk) -> None
         for index in range(menu.index("end") + 1):
             labels.append(menu.entrycget(index, "label"))
     assert {one.label for one in desk.commands.all} <= set(labels)
-    keys = [one.key for one in desk.commands.all if one.key]
+    keys = [one.key for one in desk.commands.all]
+    assert all(keys)
     assert len(keys) == len(set(keys))
 
 

@@ -10,7 +10,9 @@ import numpy as np
 import pytest
 from desk.actions import RandomUser, undo_all
 from desk.windows import INVENTED, answer, invented_pair, opened, press, settle
+from matplotlib.colors import to_hex
 
+from relorbit.desk.parts import on_screen
 from relorbit.desk.plot_view import PlotView
 from relorbit.desk.settings import Settings
 from relorbit.desk.theme import DARK, LIGHT, Palette
@@ -154,6 +156,20 @@ def test_dragging_with_another_button_moves_the_picture(looked_at: Desk, button:
     desk.model.edit_cell(20, "note", "an edit keeps the view")
     settle(desk, 0.2)
     assert spot(sky, sky.axes, 20) == pytest.approx((x + 40, y - 30), abs=1)
+
+
+def test_dragging_with_space_held_moves_the_picture(looked_at: Desk) -> None:
+    desk = looked_at
+    sky = desk.sky
+    x, y = spot(sky, sky.axes, 20)
+    sky.widget.focus_force()
+    desk.root.update()
+    sky.widget.event_generate("<KeyPress-space>")
+    drag(sky, (150, 150), (190, 120))
+    sky.widget.event_generate("<KeyRelease-space>")
+    settle(desk, 0.1)
+    assert spot(sky, sky.axes, 20) == pytest.approx((x + 40, y - 30), abs=1)
+    assert not desk.model.selection
 
 
 def test_both_strips_share_the_zoom_of_time(looked_at: Desk) -> None:
@@ -419,6 +435,21 @@ def test_sizes_follow_the_scaling_and_nothing_needed_is_cut(display: str, tmp_pa
         desk._end()
 
 
+def test_lists_that_are_open_already_change_colours_too(looked_at: Desk) -> None:
+    box = looked_at.table.filters.technique
+    opened_list = f"{box.tk.call('ttk::combobox::PopdownWindow', box)}.f.l"
+    assert str(box.tk.call(opened_list, "cget", "-background")) == LIGHT.paper
+    press(looked_at, "Control-d")
+    assert str(box.tk.call(opened_list, "cget", "-background")) == DARK.paper
+
+
+@pytest.mark.parametrize(("geometry", "seen"), [
+    ("800x600+10+10", True), ("800x600+-700+10", True), ("800x600+-790+10", False),
+    ("800x600+5000+10", False), ("800x6000+10+10", False), ("", False)])  # fmt: skip
+def test_a_window_is_not_put_where_nobody_sees_it(desk: Desk, geometry: str, seen: bool) -> None:
+    assert on_screen(desk.root, geometry) is seen
+
+
 def test_dark_and_light_colour_the_pictures_too(looked_at: Desk) -> None:
     desk = looked_at
     press(desk, "Control-d")
@@ -427,6 +458,8 @@ def test_dark_and_light_colour_the_pictures_too(looked_at: Desk) -> None:
     corner = np.asarray(desk.sky.canvas.buffer_rgba())[2, 2, :3]
     assert "#" + "".join(f"{part:02X}" for part in corner) == DARK.ground
     assert desk.sky._curve.get_color() == DARK.curve
+    assert to_hex(desk.sky.axes.spines["left"].get_edgecolor()).upper() == DARK.line
+    assert {text.get_color() for text in desk.sky.axes.texts} == {DARK.ink}
 
 
 # -- anything at all -------------------------------------------------------------------------------

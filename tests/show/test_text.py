@@ -60,7 +60,7 @@ def test_what_a_circular_face_on_orbit_lacks_is_said(pair):
                         ("i", "undefined: face-on"), ("node", "undefined: face-on")):  # fmt: skip
         assert " ".join(row_of(table, name)).endswith(words)
     tilted = text.elements_table(replace(flat, i=20.0), sigma)
-    assert " ".join(row_of(tilted, "node")).endswith("error unknown")
+    assert " ".join(row_of(tilted, "node")).endswith("not determined")
 
 
 def test_elements_alone_have_no_error_column():
