@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -27,16 +27,25 @@ from relorbit.solve.limits import (
     rise_at_long_periods,
     straight_motion,
 )
+from relorbit.solve.noise import best_of
 from relorbit.solve.observations import Observations, observe
 from relorbit.solve.refine import Holding, Refined, covariance, polar_problem, refine
 from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Alternative, Notice, Solution
 from relorbit.solve.warnings import gather
+from relorbit.solve.weighing import (
+    Weighing,
+    find_weighed_orbits,
+    layout_of,
+    settle_with_weights,
+    weighing,
+)
 
 # An orbit has three unknowns more than a straight line; for chance alone to lower chi2 by this
 # much with three unknowns has a probability of 0.001 (chi-square distribution).
 CURVATURE = 16.3
 MOST_ALTERNATIVES = 12
+ERRORS = ("as-given", "from-residuals")
 
 
 def solve(
@@ -46,6 +55,9 @@ def solve(
     epoch_range: tuple[float, float] | None = None,
     period_range: tuple[float, float] | None = None,
     passage_near: float | None = None,
+    errors: str = "as-given",
+    group_by: Sequence[str] | str | None = None,
+    offsets: Sequence[str] | str | None = None,
     on_progress: Callable[[float], None] | None = None,
 ) -> Solution:
     """Find the orbit of a pair.
@@ -63,6 +75,17 @@ def solve(
         divided by the number of epochs (not below a fortieth of the span) to 100 time spans.
     passage_near : float, optional
         Julian year; T is the passage nearest to it instead of the weighted mean epoch.
+    errors : "as-given" or "from-residuals"
+        Take the errors that the measures bring (or the usual ones of their technique), or
+        estimate those of each group with the orbit, slips down-weighted: see
+        `relorbit.solve.noise`. The solution's `noise` then tells them, its chi2 is weighted, and
+        its residuals hold the errors found.
+    group_by : sequence of str, or text with commas, optional
+        What makes a group: "technique", "observer", "aperture", "era"; see
+        `relorbit.solve.groups.group_names`.
+    offsets : sequence of str, optional
+        Names of groups whose zero points, in theta and in the scale of rho, are fitted too; "all"
+        is all but the largest.
     on_progress : callable, optional
         Called with the share done, 0 to 1, in the calling thread; an exception that it raises
         ends the work and is passed on, which is how to cancel.
@@ -74,7 +97,7 @@ def solve(
     Raises
     ------
     InputError
-        For an element that does not exist, or a value that it cannot have.
+        For an element, grouping or group that does not exist, or a value that it cannot have.
     Undetermined
         When the measures do not determine the orbit; `reason` says why and what would cure it,
         `known` what they do say (a lower limit of the period, the motion).
@@ -82,13 +105,34 @@ def solve(
     held = _holding(hold)
     observations = observe(pair.measures, epoch_range)
     _enough(observations, held)
-    t0, orbits = find_basins(observations, held, _period_range(period_range), on_progress)
+    weighed = None
+    if _weighed(errors, group_by, offsets):
+        layout = layout_of(pair.measures, observations.rows, group_by, offsets)
+        given = observations
+        t0, orbits, noise, observations = find_weighed_orbits(
+            given, layout, held, _period_range(period_range), on_progress
+        )
+        weighed = weighing(pair.measures, given, noise, observations)
+    else:
+        t0, orbits = find_basins(observations, held, _period_range(period_range), on_progress)
     open_period = None
     if not held.values:
         scale = max(1.0, float(orbits.chi2[0]) / (observations.numbers - held.free))
         open_period = _determined(observations, orbits, scale, t0)
     found = [open_period] if open_period else []
-    return _solution(pair, observations, held, t0, orbits, passage_near, found)
+    return _solution(pair, observations, held, t0, orbits, passage_near, found, weighed)
+
+
+def _weighed(
+    errors: str, group_by: Sequence[str] | str | None, offsets: Sequence[str] | str | None
+) -> bool:
+    if errors not in ERRORS:
+        raise InputError(f"errors cannot be {errors!r}; take {' or '.join(ERRORS)}")
+    if errors == "as-given" and (group_by is not None or offsets):
+        raise InputError(
+            "groups and zero points belong to errors taken from the residuals; ask for those"
+        )
+    return errors == "from-residuals"
 
 
 def refine_from(
@@ -97,6 +141,9 @@ def refine_from(
     hold: Mapping[str, Any] | None = None,
     *,
     epoch_range: tuple[float, float] | None = None,
+    errors: str = "as-given",
+    group_by: Sequence[str] | str | None = None,
+    offsets: Sequence[str] | str | None = None,
 ) -> Solution:
     """The orbit at the minimum of chi2 nearest to given elements: no search, no other orbits.
 
@@ -108,8 +155,17 @@ def refine_from(
     _enough(observations, held)
     t0 = observations.mean_epoch
     problem = polar_problem(observations, t0)
-    orbits = refine(problem, regular_from_elements(elements, t0), held, LAST_STEPS)
-    return _solution(pair, observations, held, t0, orbits, elements.T, [])
+    start = regular_from_elements(elements, t0)
+    orbits = refine(problem, start, held, LAST_STEPS)
+    weighed = None
+    if _weighed(errors, group_by, offsets):
+        layout = layout_of(pair.measures, observations.rows, group_by, offsets)
+        starts = [held.put_back(start[None], t0)[0], orbits.u[0]]
+        noise = best_of(observations, layout, starts, t0, held)
+        orbits, noise, weighted = settle_with_weights(observations, noise, noise.u[None], t0, held)
+        weighed = weighing(pair.measures, observations, noise, weighted)
+        observations = weighted
+    return _solution(pair, observations, held, t0, orbits, elements.T, [], weighed)
 
 
 def recorded_solution(pair: Pair, record: RecordedOrbit) -> Solution:
@@ -159,12 +215,19 @@ def _solution(
     orbits: Refined,
     passage_near: float | None,
     found: list[Notice],
+    weighed: Weighing | None = None,
 ) -> Solution:
     """The best of some refined orbits with all that a solution says of it."""
     dof = observations.numbers - held.free
-    scale = max(1.0, float(orbits.chi2[0]) / dof)
     u = orbits.u[0]
-    matrix = scale * covariance(polar_problem(observations, t0), u, held)
+    if weighed is None:
+        scale = max(1.0, float(orbits.chi2[0]) / dof)
+        matrix = scale * covariance(polar_problem(observations, t0), u, held)
+        measures = pair.measures
+    else:
+        # the errors are those that the residuals show: nothing is left to scale
+        scale, matrix, measures = 1.0, weighed.noise.covariance, weighed.measures
+        dof -= 2 * len(weighed.noise.layout.offset_groups)
     elements = _elements(u, t0, held, passage_near)
     used = np.zeros(len(pair.measures), dtype=bool)
     used[observations.rows] = True
@@ -179,7 +242,8 @@ def _solution(
         held=dict(held.values),
         measures=len(pair.measures),
         used=len(observations),
-        residuals=residuals(elements, pair.measures, used),
+        residuals=residuals(elements, measures, used),
+        noise=() if weighed is None else weighed.groups,
         alternatives=tuple(_alternatives(orbits, t0, held, passage_near)),
         mass_total=_mass(pair, elements, uncertainty),
         span=observations.span,
