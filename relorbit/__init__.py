@@ -17,7 +17,9 @@ __version__ = "0.1.0"
 
 if TYPE_CHECKING:
     from relorbit.batch import solve_many
+    from relorbit.derive.companion import CompanionSearch, search_companion
     from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
+    from relorbit.derive.judge import Judgement, judge
     from relorbit.errors import InputError, RelorbitError, Undetermined
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
@@ -25,28 +27,37 @@ if TYPE_CHECKING:
     from relorbit.orbit.elements import Elements
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
+    from relorbit.solve.weighing import NoiseGroup
 
 _HOMES = {
+    "CompanionSearch": "relorbit.derive.companion",
     "Elements": "relorbit.orbit.elements",
     "Ephemeris": "relorbit.derive.ephemeris",
     "InputError": "relorbit.errors",
+    "Judgement": "relorbit.derive.judge",
     "Measures": "relorbit.measures.table",
+    "NoiseGroup": "relorbit.solve.weighing",
     "Pair": "relorbit.measures.pair",
     "RecordedOrbit": "relorbit.measures.pair",
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
     "ephemeris": "relorbit.derive.ephemeris",
+    "judge": "relorbit.derive.judge",
     "read": "relorbit.measures.store",
+    "search_companion": "relorbit.derive.companion",
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
 }
 __all__ = [
+    "CompanionSearch",
     "Elements",
     "Ephemeris",
     "InputError",
+    "Judgement",
     "Measures",
+    "NoiseGroup",
     "Pair",
     "RecordedOrbit",
     "RelorbitError",
@@ -54,7 +65,9 @@ __all__ = [
     "Undetermined",
     "__version__",
     "ephemeris",
+    "judge",
     "read",
+    "search_companion",
     "solve",
     "solve_many",
     "turning_points",

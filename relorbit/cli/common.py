@@ -18,6 +18,9 @@ if TYPE_CHECKING:
     from relorbit.orbit.elements import Elements
 
 
+DEFAULT_ERRORS = "as-given"
+
+
 def add_pair(parser: argparse.ArgumentParser, optional: bool = False) -> None:
     """The pair that a verb works on."""
     parser.add_argument(
@@ -52,6 +55,26 @@ def add_fit(parser: argparse.ArgumentParser) -> None:
         "--period-range", metavar="SHORTEST:LONGEST", help="search only these periods, in years"
     )
     parser.add_argument(
+        "--errors",
+        choices=("from-residuals", "as-given"),
+        default=None,
+        help="estimate the error of each group of measures with the orbit, slips down-weighted, or "
+        f"take the errors given (default: {DEFAULT_ERRORS})",
+    )
+    parser.add_argument(
+        "--group-by",
+        metavar="WORDS",
+        help="what makes a group: technique, observer, aperture, era (or era:1950/1980), with "
+        "commas between (default: technique,observer)",
+    )
+    parser.add_argument(
+        "--offsets",
+        action="append",
+        default=[],
+        metavar="GROUP",
+        help="also fit the zero point of this group, or of all; may be given several times",
+    )
+    parser.add_argument(
         "--passage-near", metavar="EPOCH", help="give T as the passage nearest to this epoch"
     )
 
@@ -65,6 +88,40 @@ def add_orbit(parser: argparse.ArgumentParser) -> None:
         "--fresh", action="store_true", help="solve anew even where an orbit is on record"
     )
     add_fit(parser)
+
+
+def add_companion(parser: argparse.ArgumentParser) -> None:
+    """Options of a look for a companion in the residuals."""
+    parser.add_argument(
+        "--companion", action="store_true", help="look for what the residuals still hide"
+    )
+    parser.add_argument(
+        "--companion-periods", metavar="SHORTEST:LONGEST", help="look at these periods, in years"
+    )
+    parser.add_argument(
+        "--level", type=float, default=0.01, metavar="SHARE",
+        help="false-alarm probability below which a signal is worth following (default 0.01)",
+    )  # fmt: skip
+    parser.add_argument(
+        "--permutations", type=int, default=999, metavar="N",
+        help="how often the residuals are shuffled (default 999)",
+    )  # fmt: skip
+    parser.add_argument(
+        "--seed", type=int, default=0, metavar="N", help="of the shuffling (default 0)"
+    )
+
+
+def companion(pair: Pair, orbit: AnyOrbit, options: argparse.Namespace) -> Any:
+    """What the residuals of an orbit hide, by the options of `add_companion`."""
+    from relorbit.derive.companion import search_companion
+
+    return search_companion(
+        as_solution(pair, orbit),
+        period_range=_range(options.companion_periods, "--companion-periods"),
+        level=options.level,
+        permutations=options.permutations,
+        seed=options.seed,
+    )
 
 
 def read(options: argparse.Namespace) -> Pair:
@@ -85,14 +142,25 @@ def solve(pair: Pair, options: argparse.Namespace) -> Any:
         "epoch_range": _range(options.epoch_range, "--epoch-range"),
         "period_range": _range(options.period_range, "--period-range"),
         "passage_near": None if near is None else epoch_from_text(near),
+        "errors": errors(options),
+        "group_by": options.group_by,
+        "offsets": options.offsets or None,
     }
     with waiting("solving"):
         return solve(pair, held, **said)
 
 
+def errors(options: argparse.Namespace) -> str:
+    """Where errors come from: asked for, or needed by groups and zero points, or the default."""
+    if options.errors is None and (options.group_by or options.offsets):
+        return "from-residuals"
+    return options.errors or DEFAULT_ERRORS
+
+
 def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:
     """The orbit on record, or a fresh solution where there is none or it is asked for."""
-    changed = options.hold or options.epoch_range or options.period_range
+    changed = options.hold or options.epoch_range or options.period_range or options.errors
+    changed = changed or options.group_by or options.offsets
     if options.orbit is not None:
         return pair.orbit(options.orbit)
     if options.fresh or changed or not pair.orbits:

@@ -1,5 +1,6 @@
 """Draw a pair: the apparent orbit with the measures and their residuals, theta and rho against
-time, the residuals, or a sheet with all of it fit to print. PNG, PDF or SVG by the file's name.
+time, the residuals, the weights of measures, the periodogram of the residuals, or a sheet with
+all of it fit to print. PNG, PDF or SVG by the file's name.
 """
 
 from __future__ import annotations
@@ -16,7 +17,7 @@ EXAMPLE = """  relorbit draw pair.ecsv --out orbit.png
   relorbit draw pair.ecsv --figure sheet --out sheet.pdf
   relorbit draw pair.ecsv --orientation eyepiece --years 20 --out finder.svg
 """
-FIGURES = ("orbit", "time", "residuals", "sheet")
+FIGURES = ("orbit", "time", "residuals", "weights", "periodogram", "sheet")
 SHEET_YEARS = 10
 
 
@@ -41,6 +42,7 @@ def configure(parser: argparse.ArgumentParser) -> None:
         "--compare", action="store_true", help="also draw the other orbits on record, thin"
     )
     common.add_orbit(parser)
+    common.add_companion(parser)
 
 
 def run(options: argparse.Namespace) -> None:
@@ -73,6 +75,12 @@ def _figure(options: argparse.Namespace, pair: Pair) -> Any:
         coming = ephemeris(orbit, coming_years(common.today(), options.years or SHEET_YEARS))
         points = turning_points(orbit, common.today())
         return sheet(solution, pair, coming, points, orientation=options.orientation)
+    if options.figure == "weights":
+        return _weights(options, pair)
+    if options.figure == "periodogram":
+        from relorbit.show.periodogram_plot import periodogram
+
+        return periodogram(common.companion(pair, orbit, options), title=pair.name)
     if options.figure == "residuals":
         return residuals_over_time(residuals(elements, pair.measures), title=pair.name)
     if options.figure == "time":
@@ -88,3 +96,11 @@ def _figure(options: argparse.Namespace, pair: Pair) -> Any:
         others=others,
         future=future,
     )
+
+
+def _weights(options: argparse.Namespace, pair: Pair) -> Any:
+    """Weights are those of a fresh fit: an orbit on record does not keep them."""
+    from relorbit.show.weight_plot import weights_over_time
+
+    options.errors = options.errors or "from-residuals"
+    return weights_over_time(common.solve(pair, options), title=pair.name)

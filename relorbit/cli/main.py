@@ -21,6 +21,7 @@ VERBS = {
     "solve": "find the orbit of a pair, with its errors and the total mass",
     "ephemeris": "positions at future or past dates, with errors",
     "residuals": "observed minus computed, for every measure",
+    "judge": "new measures against the orbit on record, and the orbit against them",
     "weigh": "the total mass and what its error is made of",
     "draw": "figures: the apparent orbit, the motion in time, the residuals, a sheet to print",
     "demo": "do the whole job on a shipped example",

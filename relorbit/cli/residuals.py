@@ -1,19 +1,28 @@
-"""Observed minus computed of every measure, from the orbit on record or a fresh solution."""
+"""Observed minus computed of every measure, from the orbit on record or a fresh solution; with
+--companion, what the residuals still hide: a wobble with a period, or a drift.
+"""
 
 from __future__ import annotations
 
 import argparse
+from typing import TYPE_CHECKING
 
 from relorbit.cli import common
 
+if TYPE_CHECKING:
+    from relorbit.derive.ephemeris import AnyOrbit
+    from relorbit.measures.pair import Pair
+
 EXAMPLE = """  relorbit residuals pair.ecsv
   relorbit residuals measures.csv --fresh --json
+  relorbit residuals pair.ecsv --errors from-residuals --companion
 """
 
 
 def configure(parser: argparse.ArgumentParser) -> None:
     common.add_pair(parser)
     common.add_orbit(parser)
+    common.add_companion(parser)
     common.add_json(parser)
 
 
@@ -25,6 +34,9 @@ def run(options: argparse.Namespace) -> None:
 
     pair = common.read(options)
     orbit = common.orbit(pair, options)
+    if options.companion:
+        _companion(pair, orbit, options)
+        return
     if isinstance(orbit, Solution):
         result = orbit.residuals
     else:
@@ -34,3 +46,14 @@ def run(options: argparse.Namespace) -> None:
         return
     print(residuals_table(result))
     print("\n" + technique_table(result))
+
+
+def _companion(pair: Pair, orbit: AnyOrbit, options: argparse.Namespace) -> None:
+    from relorbit.show.companion_text import companion_text
+
+    with common.waiting("looking for a companion"):
+        found = common.companion(pair, orbit, options)
+    if options.json:
+        common.print_json(found.to_dict())
+        return
+    print(companion_text(found))

@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from relorbit.orbit.elements import NAMES, Elements
+from relorbit.show.noise_text import noise_table
 from relorbit.show.numbers import (
     angle,
     dates_of,
@@ -60,7 +61,7 @@ def solution_text(solution: Solution) -> str:
         elements_table(solution),
         mass_text(solution),
         alternatives_table(solution),
-        technique_table(solution.residuals),
+        noise_table(solution.noise) or technique_table(solution.residuals),
         warnings_text(solution.warnings),
     ]
     return "\n\n".join(part for part in parts if part)
@@ -129,7 +130,8 @@ def elements_table(
     rows = element_rows(orbit.elements, orbit.sigma, orbit.held)
     if orbit.error_scale <= 1.0:
         return _elements(rows, ["value", "sigma"], None) + (
-            "\nsigma: one standard deviation, from the errors of the measures"
+            "\nsigma: one standard deviation, from the errors "
+            + ("that the residuals show" if orbit.noise else "of the measures")
         )
     formal = {name: error_text(s) if known(s) else "" for name, s in orbit.sigma_formal.items()}
     note = (

@@ -62,6 +62,12 @@ def polar_problem(observations: Observations, reference_epoch: float) -> Problem
     return Problem(reference_epoch, with_jacobian)
 
 
+def places_of_values(observations: Observations) -> NDArray[np.intp]:
+    """Where the measured thetas, and then the measured rhos, stand among polar residuals."""
+    theta, rho = np.flatnonzero(observations.per_theta), np.flatnonzero(observations.per_rho)
+    return np.concatenate([2 * theta + 1, 2 * rho])
+
+
 def sky_problem(data: SkyData, reference_epoch: float) -> Problem:
     """Standardised residuals of x and y: smooth where theta is not, so good far from home."""
     # W = L L' with L lower triangular, so L' dz is standardised

@@ -14,6 +14,7 @@ from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import Uncertainty, campbell_covariance
 from relorbit.orbit.third_law import TotalMass, axis_cubed_over_period_squared
 from relorbit.solve.residuals import Residuals
+from relorbit.solve.weighing import NoiseGroup
 
 SCHEMA = "relorbit/solution/1"
 
@@ -66,6 +67,9 @@ class Solution:
         None without a parallax.
     span : float
         Years covered by the measures fitted.
+    noise : tuple of NoiseGroup
+        What each group of measures is worth; empty where the errors were taken as given. Then
+        chi2 is weighted (its mean is dof), and residuals hold the errors found.
     """
 
     pair: str
@@ -84,6 +88,7 @@ class Solution:
     span: float = 0.0
     parallax_mas: float | None = None
     parallax_err_mas: float | None = None
+    noise: tuple[NoiseGroup, ...] = ()
     _covariance: FloatArray = field(init=False, repr=False, compare=False)
 
     def __post_init__(self) -> None:
@@ -173,6 +178,7 @@ class Solution:
             "mass_total": None if self.mass_total is None else self.mass_total.to_dict(),
             "alternatives": [one.to_dict() for one in self.alternatives],
             "warnings": [one.to_dict() for one in self.warnings],
+            "noise": [one.to_dict() for one in self.noise],
         }
 
 

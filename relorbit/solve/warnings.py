@@ -120,6 +120,14 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
             "the measures scatter more than their errors allow: look for slips among the largest "
             "residuals",
         )
+    down = sorted(row for group in s.noise for row in group.down_weighted)
+    if down:
+        rows = ", ".join(str(row + 1) for row in down[:8]) + (" ..." if len(down) > 8 else "")
+        yield Notice(
+            "down-weighted",
+            f"{len(down)} of {len(o)} measures lie more than three times their group's error off "
+            f"and count for little: measure {rows}; look for slips",
+        )
     with np.errstate(invalid="ignore"):
         wrong_side = s.residuals.used & (np.abs(s.residuals.d_theta) > 90.0)
     if wrong_side.any():

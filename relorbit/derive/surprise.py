@@ -1,0 +1,84 @@
+"""How surprising new measures are when the orbit's errors are not small: by a refit.
+
+Errors carried to first order fail where an orbit is weakly known: the orbits that the measures
+allow lie along a bent valley. By how much chi2 rises when new measures join the old ones, every
+basin searched, has no such limit; for small errors it is the same number.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+
+import numpy as np
+from scipy.stats import chi2 as chi2_distribution
+
+from relorbit.measures.table import Measures
+from relorbit.orbit.elements import Elements
+from relorbit.orbit.kepler import FloatArray
+from relorbit.orbit.regular import SIZE, regular_from_elements
+from relorbit.solve.basins import LAST_STEPS, find_basins
+from relorbit.solve.observations import observe
+from relorbit.solve.refine import polar_problem, refine
+from relorbit.solve.residuals import residuals
+from relorbit.solve.solution import Solution
+
+# rise of chi2 beyond which an orbit is not that of its own measures: chance alone exceeds it in
+# one of two hundred cases with seven unknowns (chi-square distribution)
+NOT_THEIRS = 20.3
+
+
+class RefitTest:
+    """The test for one list of measures and one set of new ones.
+
+    Parameters
+    ----------
+    before : Solution
+        The orbit of the measures on record; its errors, and weights, are kept.
+    old, new : Measures
+        New ones with every error filled in.
+    report : callable
+        Called before each refit; what it raises ends the work.
+    """
+
+    def __init__(
+        self, before: Solution, old: Measures, new: Measures, report: Callable[[], None]
+    ) -> None:
+        self.before, self.new, self.report = before, new, report
+        self.old = _with_weights(before, old)
+        self.scale = before.error_scale**2
+        o = observe(self.old)
+        t0 = o.mean_epoch
+        start = regular_from_elements(before.elements, t0)
+        self.chi2 = float(refine(polar_problem(o, t0), start, None, LAST_STEPS).chi2[0])
+
+    def is_theirs(self, elements: Elements) -> bool:
+        """True where an orbit fits the old measures about as well as the best one near it."""
+        rise = residuals(elements, self.old).chi2 - self.chi2
+        return self.before.dof > SIZE and rise <= NOT_THEIRS * self.scale
+
+    def __call__(self, rows: FloatArray) -> tuple[float, int, float]:
+        """Rise of chi2 by some of the new measures, their values, and its probability."""
+        self.report()
+        joined = observe(self.old.append(self.new.select(np.asarray(rows, dtype=int))))
+        values = joined.numbers - observe(self.old).numbers
+        t0, orbits = find_basins(joined, on_progress=lambda share: self.report())
+        near = refine(
+            polar_problem(joined, t0), regular_from_elements(self.before.elements, t0), None,
+            LAST_STEPS,
+        )  # fmt: skip
+        chi2 = min(float(orbits.chi2[0]), float(near.chi2[0]))
+        rise = max(chi2 - self.chi2, 0.0) / self.scale
+        return rise, values, float(chi2_distribution.sf(rise, values))
+
+
+def _with_weights(before: Solution, old: Measures) -> Measures:
+    """The old measures with the errors of a solution, larger where it gave them less weight."""
+    r = before.residuals
+    theta_err, rho_err = r.theta_err.copy(), r.rho_err.copy()
+    for group in before.noise:
+        rows = np.array(group.rows)
+        for error, weight in ((theta_err, group.theta_weight), (rho_err, group.rho_weight)):
+            known = np.array([1.0 if w is None else w for w in weight])
+            error[rows] /= np.sqrt(known)
+    return replace(old, theta_err=theta_err, rho_err=rho_err)
