@@ -18,11 +18,17 @@ __version__ = "0.1.0"
 if TYPE_CHECKING:
     from relorbit.batch import solve_many
     from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
+    from relorbit.derive.posterior import sampled_ephemeris
     from relorbit.errors import InputError, RelorbitError, Undetermined
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
     from relorbit.orbit.elements import Elements
+    from relorbit.solve.kind import kind
+    from relorbit.solve.posterior import Posterior
+    from relorbit.solve.prior import Prior
+    from relorbit.solve.sample import sample
+    from relorbit.solve.saved_samples import read_samples
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
 
@@ -36,8 +42,14 @@ _HOMES = {
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
+    "Posterior": "relorbit.solve.posterior",
+    "Prior": "relorbit.solve.prior",
     "ephemeris": "relorbit.derive.ephemeris",
+    "kind": "relorbit.solve.kind",
     "read": "relorbit.measures.store",
+    "read_samples": "relorbit.solve.saved_samples",
+    "sample": "relorbit.solve.sample",
+    "sampled_ephemeris": "relorbit.derive.posterior",
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
@@ -48,13 +60,19 @@ __all__ = [
     "InputError",
     "Measures",
     "Pair",
+    "Posterior",
+    "Prior",
     "RecordedOrbit",
     "RelorbitError",
     "Solution",
     "Undetermined",
     "__version__",
     "ephemeris",
+    "kind",
     "read",
+    "read_samples",
+    "sample",
+    "sampled_ephemeris",
     "solve",
     "solve_many",
     "turning_points",
