@@ -21,7 +21,7 @@ class CellEditor:
     def __init__(self, table: TableView) -> None:
         self.table = table
         self.open = False
-        self._row = -1
+        self._row, self._count = -1, 0
         self._at = 0
         self._column = "theta"
         self.field = ttk.Combobox(table.tree, height=len(TECHNIQUES))
@@ -45,6 +45,7 @@ class CellEditor:
         self.cancel()
         measures = self.table.model.pair.measures
         self._at, self._column, self._row = at, column, int(self.table.rows[at])
+        self._count = len(measures)
         self.open = True
         choices = TECHNIQUES if column == "technique" else ()
         self.field.configure(values=choices, style="TCombobox" if choices else "Cell.TCombobox")
@@ -126,6 +127,10 @@ class CellEditor:
     def take(self, stay: bool = True) -> bool:
         """Take over what was typed; where it cannot be, say why and keep the text."""
         if not self.open:
+            return True
+        if len(self.table.model.pair.measures) != self._count:
+            # measures came or went meanwhile: the row may be another one, or none
+            self.cancel()
             return True
         text, row, column = self.field.get(), self._row, self._column
         self.open = False  # the table is filled anew by the change, and must not place the field

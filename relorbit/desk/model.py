@@ -173,9 +173,15 @@ class DeskModel:
             self._after_travel()
 
     def _after_travel(self) -> None:
-        count = len(self.pair.measures)
-        self.selection = frozenset(row for row in self.selection if row < count)
+        self._forget_lost_rows()
         self._tell(PAIR, ORBIT, SELECTION, FILE)
+
+    def _forget_lost_rows(self) -> bool:
+        """Take rows that are no longer there out of the selection; whether there were any."""
+        count = len(self.pair.measures)
+        kept = frozenset(row for row in self.selection if row < count)
+        lost, self.selection = kept != self.selection, kept
+        return lost
 
     def _do(self, label: str, state: State, *kinds: str, merge: bool = False) -> None:
         """Make `state` the present; `merge` replaces a step of the same label (a drag)."""
@@ -186,6 +192,8 @@ class DeskModel:
         else:
             self._history.append(Step(label, state))
             self._place += 1
+        if self._forget_lost_rows():
+            kinds = (*kinds, SELECTION)
         self._tell(*kinds)
 
     def _change_pair(self, label: str, pair: Pair, *more: str) -> None:
@@ -196,7 +204,9 @@ class DeskModel:
     # -- measures ------------------------------------------------------------------------------
 
     def select(self, rows: Iterable[int]) -> None:
-        rows = frozenset(rows)
+        """Select measures; rows that there are not are left out."""
+        count = len(self.pair.measures)
+        rows = frozenset(row for row in rows if 0 <= row < count)
         if rows != self.selection:
             self.selection = rows
             self._tell(SELECTION)

@@ -118,6 +118,10 @@ def search(
     reference = 0.5 * (data.epoch[0] + data.epoch[-1])
     span = max(data.epoch[-1] - data.epoch[0], np.finfo(float).tiny)
     epoch, values = _normal_points(data)
+    # single precision overflows on the weights of errors near zero, so both get units of their own
+    weight_unit = float(np.abs(values[:3]).max()) or 1.0
+    size_unit = float(np.abs(values[3:]).max()) / weight_unit or 1.0
+    values = values / np.array([weight_unit] * 3 + [weight_unit * size_unit] * 2)[:, None]
     gain = np.empty((periods.size, len(eccentricities)))
     phase = np.empty_like(gain)
     for start in range(0, periods.size, BLOCK):
@@ -138,7 +142,8 @@ def search(
             gain[rows, column] = np.take_along_axis(every, best[:, None], axis=-1)[:, 0]
             phase[rows, column] = best / every.shape[-1]
     T = reference + phase * periods[:, None]
-    return SearchMap(periods, np.array(eccentricities), data.constant - gain, T)
+    chi2 = data.constant - weight_unit * size_unit**2 * gain
+    return SearchMap(periods, np.array(eccentricities), chi2, T)
 
 
 def _normal_points(data: SkyData) -> tuple[FloatArray, FloatArray]:

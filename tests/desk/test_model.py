@@ -293,3 +293,16 @@ def test_restored_work_is_unsaved_over_the_files_own(model):
     assert model.pair is rescued and model.unsaved
     model.undo()
     assert model.pair is saved and not model.unsaved
+
+
+def test_rows_that_are_gone_leave_the_selection(model):
+    """Found by the random user, seed 3: fewer rows came back from the disk than were selected."""
+    count = len(model.pair.measures)
+    model.select([0, count - 1])
+    heard = told(model)
+    model.take_in(model.pair.with_measures(model.pair.measures.select(np.arange(count - 1))))
+    assert model.selection == {0}
+    assert any(SELECTION in kinds for kinds in heard)
+    model.set_use(model.selection, False)
+    model.select([0, count - 1, -1])
+    assert model.selection == {0}

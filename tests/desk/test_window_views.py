@@ -353,6 +353,19 @@ def test_escape_leaves_the_cell_as_it_was(looked_at: Desk) -> None:
     assert desk.model.pair is before
 
 
+def test_a_cell_whose_measure_is_gone_changes_no_other(looked_at: Desk) -> None:
+    """Found by the random user, seed 3: the file was read again while a cell was open."""
+    desk = looked_at
+    press(desk, "F2")
+    assert desk.table.editor.open
+    desk.table.editor.field.set("12")
+    fewer = desk.model.pair.with_measures(desk.model.pair.measures.select(range(1, 20)))
+    desk.model.take_in(fewer)
+    assert desk.table.editor.take()
+    assert not desk.table.editor.open
+    assert desk.model.pair is fewer
+
+
 def test_measures_set_aside_stay_and_are_quiet(looked_at: Desk) -> None:
     desk = looked_at
     desk.model.select({1, 2})

@@ -128,3 +128,17 @@ def test_the_resolution_of_T_follows_the_eccentricity() -> None:
         found = search(data, np.array([40.0]), (e,))
         phase = (found.T[0, 0] - 0.5 * (data.epoch[0] + data.epoch[-1])) / 40.0 * bins
         assert phase == pytest.approx(np.rint(phase), abs=1e-6)
+
+
+@pytest.mark.parametrize("tiny", [1e-9, 1e-25, 1e-40])
+def test_one_error_near_zero_overflows_nothing(tiny: float) -> None:
+    """Found by the desk's random user: squares of such weights are beyond single precision."""
+    data = invented(count=60, first=1930.0)
+    w_xx, w_yy = data.w_xx.copy(), data.w_yy.copy()
+    w_xx[30] = w_yy[30] = 1.0 / tiny**2
+    w_xy = data.w_xy.copy()
+    w_xy[30] = 0.0
+    one = SkyData(data.epoch, data.z, w_xx, w_xy, w_yy)
+    found = search(one, 0.05 * PAIR.P * np.array([1.0, 1.3]))  # short: in single precision
+    assert np.isfinite(found.chi2).all()
+    assert np.isfinite(found.T).all()
