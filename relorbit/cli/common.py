@@ -224,6 +224,7 @@ def elements(text: str) -> Elements:
 
 
 def range_of(text: str | None, option: str) -> tuple[float, float] | None:
+    """Two numbers, the lower first, from ``1900:2000``; None where nothing was said."""
     if text is None:
         return None
     first, colon, last = text.partition(":")

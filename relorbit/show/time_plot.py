@@ -199,6 +199,7 @@ def _band(
 
 
 def finish(axes: Axes, first: float, last: float, name: str) -> None:
+    """Scales and labels of a panel in time."""
     quiet(axes)
     axes.set_xlim(first, last)
     axes.xaxis.set_major_locator(MaxNLocator(8, steps=[1, 2, 5, 10]))
