@@ -20,11 +20,17 @@ if TYPE_CHECKING:
     from relorbit.derive.companion import CompanionSearch, search_companion
     from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
     from relorbit.derive.judge import Judgement, judge
+    from relorbit.derive.posterior import sampled_ephemeris
     from relorbit.errors import InputError, RelorbitError, Undetermined
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
     from relorbit.orbit.elements import Elements
+    from relorbit.solve.kind import kind
+    from relorbit.solve.posterior import Posterior
+    from relorbit.solve.prior import Prior
+    from relorbit.solve.sample import sample
+    from relorbit.solve.saved_samples import read_samples
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
     from relorbit.solve.weighing import NoiseGroup
@@ -42,9 +48,15 @@ _HOMES = {
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
+    "Posterior": "relorbit.solve.posterior",
+    "Prior": "relorbit.solve.prior",
     "ephemeris": "relorbit.derive.ephemeris",
     "judge": "relorbit.derive.judge",
+    "kind": "relorbit.solve.kind",
     "read": "relorbit.measures.store",
+    "read_samples": "relorbit.solve.saved_samples",
+    "sample": "relorbit.solve.sample",
+    "sampled_ephemeris": "relorbit.derive.posterior",
     "search_companion": "relorbit.derive.companion",
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
@@ -59,6 +71,8 @@ __all__ = [
     "Measures",
     "NoiseGroup",
     "Pair",
+    "Posterior",
+    "Prior",
     "RecordedOrbit",
     "RelorbitError",
     "Solution",
@@ -66,7 +80,11 @@ __all__ = [
     "__version__",
     "ephemeris",
     "judge",
+    "kind",
     "read",
+    "read_samples",
+    "sample",
+    "sampled_ephemeris",
     "search_companion",
     "solve",
     "solve_many",

@@ -14,6 +14,7 @@ from relorbit.errors import InputError
 
 if TYPE_CHECKING:
     from relorbit.derive.ephemeris import AnyOrbit
+    from relorbit.errors import Undetermined
     from relorbit.measures.pair import Pair
     from relorbit.orbit.elements import Elements
 
@@ -117,7 +118,7 @@ def companion(pair: Pair, orbit: AnyOrbit, options: argparse.Namespace) -> Any:
 
     return search_companion(
         as_solution(pair, orbit),
-        period_range=_range(options.companion_periods, "--companion-periods"),
+        period_range=range_of(options.companion_periods, "--companion-periods"),
         level=options.level,
         permutations=options.permutations,
         seed=options.seed,
@@ -139,8 +140,8 @@ def solve(pair: Pair, options: argparse.Namespace) -> Any:
     near = options.passage_near
     held = assignments(options.hold, "--hold")
     said = {
-        "epoch_range": _range(options.epoch_range, "--epoch-range"),
-        "period_range": _range(options.period_range, "--period-range"),
+        "epoch_range": range_of(options.epoch_range, "--epoch-range"),
+        "period_range": range_of(options.period_range, "--period-range"),
         "passage_near": None if near is None else epoch_from_text(near),
         "errors": errors(options),
         "group_by": options.group_by,
@@ -155,6 +156,14 @@ def errors(options: argparse.Namespace) -> str:
     if options.errors is None and (options.group_by or options.offsets):
         return "from-residuals"
     return options.errors or DEFAULT_ERRORS
+
+
+def short_arc(pair: Pair, options: argparse.Namespace, error: Undetermined) -> Undetermined:
+    """A refusal of `solve`, with what the measures do say."""
+    from relorbit.solve.short_arc import short_arc_answer
+
+    epochs = range_of(options.epoch_range, "--epoch-range")
+    return short_arc_answer(pair, error, epoch_range=epochs)
 
 
 def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:
@@ -214,7 +223,8 @@ def elements(text: str) -> Elements:
         raise InputError(f"--elements: {error}") from None
 
 
-def _range(text: str | None, option: str) -> tuple[float, float] | None:
+def range_of(text: str | None, option: str) -> tuple[float, float] | None:
+    """Two numbers, the lower first, from ``1900:2000``; None where nothing was said."""
     if text is None:
         return None
     first, colon, last = text.partition(":")
@@ -229,6 +239,17 @@ def _range(text: str | None, option: str) -> tuple[float, float] | None:
     if not low < high:
         raise InputError(f"{option}: {text!r} is empty; write the smaller number first")
     return low, high
+
+
+def value_and_error(text: str, option: str) -> tuple[float, float]:
+    """Two numbers from ``2.1:0.2``; InputError naming the option otherwise."""
+    value, colon, error = text.partition(":")
+    try:
+        if not colon:
+            raise ValueError
+        return float(value), float(error)
+    except ValueError:
+        raise InputError(f"{option}: {text!r} is not VALUE:ERROR, such as 2.1:0.2") from None
 
 
 def print_json(content: Any) -> None:
@@ -269,3 +290,16 @@ def _tick(what: str, done: threading.Event) -> None:
         print(f"\r{what} ... {seconds} s", end="", file=sys.stderr, flush=True)
     if seconds:
         print("\r\033[K", end="", file=sys.stderr, flush=True)
+
+
+@contextmanager
+def progress(what: str) -> Iterator[Any]:
+    """A callable for the share done, which shows a bar on a terminal once it takes a second."""
+    if not sys.stderr.isatty():
+        yield None
+        return
+    from tqdm import tqdm
+
+    look = "{desc} {bar} {n:.0f} %"
+    with tqdm(total=100, desc=what, delay=1.0, leave=False, bar_format=look) as bar:
+        yield lambda share: bar.update(max(0.0, 100.0 * share - bar.n))

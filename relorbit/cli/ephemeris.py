@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 EXAMPLE = """  relorbit ephemeris pair.ecsv --from 2027 --to 2037 --step 1y
   relorbit ephemeris pair.ecsv --from 2027-03-01 --to 2027-09-01 --step 30d --json
+  relorbit ephemeris --from-samples samples.ecsv --from 2027 --to 2060 --step 3y
   relorbit ephemeris --elements P=41.6,T=1934.0,e=0.28,a=0.9,i=59,node=24,omega=220 --at 1980.0
 """
 
@@ -39,11 +40,18 @@ def configure(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--at", metavar="EPOCH,EPOCH,...", help="these epochs instead: years or dates"
     )
+    parser.add_argument(
+        "--from-samples", metavar="FILE",
+        help="medians and intervals from samples that `relorbit sample --out` has saved",
+    )  # fmt: skip
     common.add_orbit(parser)
     common.add_json(parser)
 
 
 def run(options: argparse.Namespace) -> None:
+    if options.from_samples is not None:
+        _from_samples(options)
+        return
     from relorbit.derive.ephemeris import ephemeris, turning_points
     from relorbit.derive.epochs import chosen_epochs
     from relorbit.show.text import ephemeris_table, turning_points_table
@@ -61,6 +69,23 @@ def run(options: argparse.Namespace) -> None:
     if points:
         print("\n" + turning_points_table(points))
     print("\nTheta at equinox J2000. Never point a telescope near the Sun.")
+
+
+def _from_samples(options: argparse.Namespace) -> None:
+    from relorbit.derive.epochs import chosen_epochs
+    from relorbit.derive.posterior import sampled_ephemeris
+    from relorbit.show.posterior_text import sampled_ephemeris_table
+    from relorbit.solve.saved_samples import read_samples
+
+    if options.pair is not None or options.elements is not None:
+        raise InputError("--from-samples brings the orbits itself; leave PAIR and --elements out")
+    epochs = chosen_epochs(options.at, options.first, options.last, options.step, common.today())
+    found = sampled_ephemeris(read_samples(options.from_samples), epochs)
+    if options.json:
+        common.print_json(found.to_dict())
+        return
+    print(sampled_ephemeris_table(found))
+    print("\nTheta at equinox J2000. Medians, and intervals that hold 68 and 95 % of the orbits.")
 
 
 def _orbit(options: argparse.Namespace) -> AnyOrbit:

@@ -19,6 +19,8 @@ from relorbit.errors import InputError, Undetermined
 VERBS = {
     "intake": "read lists of measures into a pair file",
     "solve": "find the orbit of a pair, with its errors and the total mass",
+    "sample": "all orbits that fit, with their probability: short arcs too",
+    "kind": "is it a pair at all: at rest, straight motion or orbit, with the odds",
     "ephemeris": "positions at future or past dates, with errors",
     "residuals": "observed minus computed, for every measure",
     "judge": "new measures against the orbit on record, and the orbit against them",

@@ -42,9 +42,11 @@ def run(options: argparse.Namespace) -> None:
     try:
         solution = common.solve(pair, options)
     except Undetermined as error:
+        with common.waiting("looking at what the arc does say"):
+            answer = common.short_arc(pair, options, error)
         if options.json:
-            common.print_json(error.to_dict())
-        raise
+            common.print_json(answer.to_dict())
+        raise answer from None
     if options.record is not None:
         _keep(pair, solution, options)
     if options.json:

@@ -86,3 +86,9 @@ def chosen_epochs(
 def coming_years(today: float, count: int) -> FloatArray:
     """The beginnings of the next `count` years after `today`, Julian years."""
     return np.floor(today) + 1.0 + np.arange(count)
+
+
+def band_epochs(measured: FloatArray, count: int = 240) -> FloatArray:
+    """Even epochs (Julian years) over the measured ones and half their span, or 10 years, on."""
+    first, last = float(np.min(measured)), float(np.max(measured))
+    return np.linspace(first, last + max(0.5 * (last - first), 10.0), count)

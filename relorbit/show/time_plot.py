@@ -108,12 +108,12 @@ def draw_theta_over_time(
     line.set_gid("orbit")
     draw_error_bars(axes, residuals.epoch, observed, residuals.theta_err, residuals)
     draw_marks(axes, residuals.epoch, observed, residuals)
-    _finish(axes, first, last, "position angle (\u00b0)")
+    finish(axes, first, last, "position angle (\u00b0)")
     if not folded:
         used = observed[residuals.used]
-        _limits(axes, [*theta, *used[np.isfinite(used)]])
+        limits(axes, [*theta, *used[np.isfinite(used)]])
     _say_beyond(axes, observed)
-    _angle_scale(axes)
+    angle_scale(axes)
 
 
 def draw_rho_over_time(
@@ -129,9 +129,9 @@ def draw_rho_over_time(
     line.set_gid("orbit")
     draw_error_bars(axes, residuals.epoch, residuals.rho, residuals.rho_err, residuals)
     draw_marks(axes, residuals.epoch, residuals.rho, residuals)
-    _finish(axes, first, last, "separation (arcsec)")
+    finish(axes, first, last, "separation (arcsec)")
     used = residuals.rho[residuals.used]
-    _limits(axes, [*rho, *used[np.isfinite(used)]], floor=0.0)
+    limits(axes, [*rho, *used[np.isfinite(used)]], floor=0.0)
     _say_beyond(axes, residuals.rho)
 
 
@@ -198,7 +198,8 @@ def _band(
     band.set_gid("predicted error")
 
 
-def _finish(axes: Axes, first: float, last: float, name: str) -> None:
+def finish(axes: Axes, first: float, last: float, name: str) -> None:
+    """Scales and labels of a panel in time."""
     quiet(axes)
     axes.set_xlim(first, last)
     axes.xaxis.set_major_locator(MaxNLocator(8, steps=[1, 2, 5, 10]))
@@ -206,7 +207,7 @@ def _finish(axes: Axes, first: float, last: float, name: str) -> None:
     label_axes(axes, "Julian year", name)
 
 
-def _limits(axes: Axes, seen: list[float], floor: float | None = None) -> None:
+def limits(axes: Axes, seen: list[float], floor: float | None = None) -> None:
     """Limits around what must be seen, whatever the error bars of a few measures do."""
     low, high = min(seen), max(seen)
     pad = 0.06 * (high - low) or 0.05 * abs(high) or 0.05
@@ -219,7 +220,7 @@ def _say_beyond(axes: Axes, values: FloatArray) -> None:
     say_how_many_beyond(axes, int(np.count_nonzero((values < low) | (values > high))))
 
 
-def _angle_scale(axes: Axes) -> None:
+def angle_scale(axes: Axes) -> None:
     """Round angles, in [0, 360) also where the curve runs on."""
     low, high = axes.get_ylim()
     wanted = (high - low) / 10.0

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from relorbit.orbit.kepler import TWO_PI, FloatArray
+from relorbit.orbit.straight import RectilinearElements, rectilinear_elements
 from relorbit.solve.basins import orbits_at
 from relorbit.solve.holding import Holding
 from relorbit.solve.linear import sky_data, solve_scaled
@@ -36,6 +37,7 @@ class StraightMotion:
     motion_north, motion_east : float, arcsec a year.
     motion_sigma : float, formal error of each component of the motion.
     chi2 : float, in theta and rho, as for an orbit.
+    covariance : ndarray, shape (4, 4), formal, of (x, x motion, y, y motion).
     """
 
     epoch: float
@@ -47,6 +49,21 @@ class StraightMotion:
     motion_east: float
     motion_sigma: float
     chi2: float
+    covariance: FloatArray
+
+    @property
+    def place(self) -> complex:
+        """x + i y at the epoch, arcsec."""
+        return complex(self.rho * np.exp(1j * np.radians(self.theta)))
+
+    @property
+    def motion(self) -> complex:
+        """x + i y, arcsec a year."""
+        return complex(self.motion_north, self.motion_east)
+
+    def rectilinear(self) -> RectilinearElements:
+        """The closest point and its epoch; ValueError where nothing moves."""
+        return rectilinear_elements(self.epoch, self.place, self.motion, self.covariance)
 
 
 def straight_motion(observations: Observations) -> StraightMotion:
@@ -87,6 +104,7 @@ def straight_motion(observations: Observations) -> StraightMotion:
         float(np.degrees(np.sqrt(across @ place @ across) / max(abs(z), 1e-12))),
         float(np.sqrt(along @ place @ along)),
         float(p[1]), float(p[3]), float(np.sqrt(0.5 * (covariance[1, 1] + covariance[3, 3]))), chi2,
+        covariance,
     )  # fmt: skip
 
 

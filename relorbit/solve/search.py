@@ -134,7 +134,10 @@ def search(
         spectra = np.fft.rfft(fields.astype(kind), axis=-1)
         for column, e in enumerate(eccentricities):
             kernels = _kernels(e).astype(spectra.dtype)
-            every = _gain(spectra[..., : kernels.shape[-1]], kernels)
+            # with a few measures all may fall on one phase: that T then gains nothing
+            with np.errstate(over="ignore", invalid="ignore"):
+                every = _gain(spectra[..., : kernels.shape[-1]], kernels)
+            np.nan_to_num(every, copy=False, nan=0.0, posinf=0.0, neginf=0.0)
             best = np.argmax(every, axis=-1)
             gain[rows, column] = np.take_along_axis(every, best[:, None], axis=-1)[:, 0]
             phase[rows, column] = best / every.shape[-1]
