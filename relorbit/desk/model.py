@@ -17,6 +17,7 @@ from relorbit.errors import InputError
 from relorbit.measures import editing
 from relorbit.measures.pair import Pair, RecordedOrbit, new_pair
 from relorbit.orbit.elements import NAMES, Elements
+from relorbit.solve.posterior import Posterior
 from relorbit.solve.solution import Solution
 
 # kinds of change that views are told of
@@ -72,12 +73,15 @@ class DeskModel:
         Julian year of the time slider.
     by_phase : bool
         The strips run along the phase of the orbit instead of time.
+    sheaf : bool
+        Whether sampled orbits, where there are any, are drawn on the sky.
     """
 
     def __init__(self, pair: Pair | None = None, path: Path | None = None) -> None:
         self._listeners: list[Callable[[frozenset[str]], None]] = []
         self.orientation = "sky"
         self.by_phase = False
+        self.sheaf = True
         self.epoch = 2000.0
         self.open(pair or new_pair("new pair"), path)
 
@@ -131,6 +135,32 @@ class DeskModel:
             self._consequences = (self.state, consequences(self.pair, self.elements))
         return self._consequences[1]
 
+    @property
+    def samples(self) -> Posterior | None:
+        """All orbits that fit the measures as they are now; None before they are sampled."""
+        return self._samples[1] if self._sampled() else None
+
+    @property
+    def samples_text(self) -> str:
+        """What there is to say of the samples, "" while there are none."""
+        return self._samples[2] if self._sampled() else ""
+
+    @property
+    def samples_outdated(self) -> bool:
+        """Whether there are samples, of measures that have been changed since."""
+        return self._samples is not None and not self._sampled()
+
+    def _sampled(self) -> bool:
+        return self._samples is not None and _same_data(self._samples[0], self.pair)
+
+    def keep_samples(self, posterior: Posterior, text: str, pair: Pair) -> bool:
+        """Put samples of `pair` beside the orbit; False where they are not of these measures."""
+        if not _same_data(pair, self.pair):
+            return False
+        self._samples = pair, posterior, text
+        self._tell(ORBIT, VIEW)
+        return True
+
     def subscribe(self, listener: Callable[[frozenset[str]], None]) -> Callable[[], None]:
         """Be told of changes, as a set of kinds; returns what ends the subscription."""
         self._listeners.append(listener)
@@ -146,6 +176,7 @@ class DeskModel:
         self._history = [Step("", State(pair, elements))]
         self._place = 0
         self._saved_pair = pair
+        self._samples: tuple[Pair, Posterior, str] | None = None
         self._consequences: tuple[State, Consequences] | None = None
         self._tell(PAIR, ORBIT, SELECTION, VIEW, FILE)
 
@@ -319,9 +350,9 @@ class DeskModel:
     # -- the view ------------------------------------------------------------------------------
 
     def look(self, **changes: Any) -> None:
-        """Change `orientation`, `epoch` or `by_phase`; not part of the history."""
+        """Change `orientation`, `epoch`, `by_phase` or `sheaf`; not part of the history."""
         for name, value in changes.items():
-            if name not in ("orientation", "epoch", "by_phase"):
+            if name not in ("orientation", "epoch", "by_phase", "sheaf"):
                 raise TypeError(f"the view has no {name!r}")
             setattr(self, name, value)
         self._tell(VIEW)
@@ -329,3 +360,10 @@ class DeskModel:
     def _tell(self, *kinds: str) -> None:
         for listener in list(self._listeners):
             listener(frozenset(kinds))
+
+
+def _same_data(one: Pair, other: Pair) -> bool:
+    """Whether samples of one pair are samples of the other too."""
+    return one.measures is other.measures and (
+        (one.parallax_mas, one.parallax_err_mas) == (other.parallax_mas, other.parallax_err_mas)
+    )

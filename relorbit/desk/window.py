@@ -22,6 +22,7 @@ from relorbit.desk.measure_actions import MeasureActions
 from relorbit.desk.model import FILE, ORBIT, PAIR, SELECTION, VIEW, DeskModel
 from relorbit.desk.orbit_actions import OrbitActions
 from relorbit.desk.parts import Bench, Panes, Status, on_screen
+from relorbit.desk.sample_actions import SampleActions
 from relorbit.desk.session import EXAMPLES, Session
 from relorbit.desk.settings import LARGEST_SCALE, SMALLEST_SCALE, Settings
 from relorbit.desk.sky_view import SkyView
@@ -81,6 +82,7 @@ class Desk:
         self.files = FileActions(self)
         self.measures = MeasureActions(self)
         self.orbits = OrbitActions(self)
+        self.sampling = SampleActions(self)
         model = self.model
         self.commands = CommandSet(self.root, (
             *self.files.commands(),
@@ -91,6 +93,7 @@ class Desk:
                     lambda: model.redo_label is not None, "Redo"),
             *self.measures.commands(),
             *self.orbits.commands(),
+            *self.sampling.commands(),
             *self._view_commands(),
             Command("help", "Keys and how to begin", "Help", "F1", self.help),
         ))  # fmt: skip

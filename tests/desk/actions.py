@@ -29,9 +29,9 @@ PASTES = (
     "a,b,c\n1,2,3\n", "2010.1 33 1.1 0.5 0.01\n2011.1 34 1.15 0.5 0.01\n", "epoch,theta\n,\n",
 )  # fmt: skip
 KEYS = (
-    "f", "x", "u", "w", "o", "p", "0", "plus", "minus", "r", "bracketleft", "bracketright",
-    "Escape", "Delete", "F2", "F5", "F6", "Up", "Down", "Shift-Up", "Shift-Down", "Left", "Right",
-    "Return", "Tab", "Home", "End", "Prior", "Next", "Control-z", "Control-y", "Control-a",
+    "f", "x", "u", "w", "o", "p", "0", "plus", "minus", "r", "a", "bracketleft", "bracketright",
+    "Escape", "Delete", "F2", "F5", "F6", "F7", "Up", "Down", "Shift-Up", "Shift-Down", "Left",
+    "Right", "Return", "Tab", "Home", "End", "Prior", "Next", "Control-z", "Control-y", "Control-a",
     "Control-c", "Control-v", "Control-k", "Control-l", "Control-e", "Control-period", "space",
 )  # fmt: skip
 
@@ -217,7 +217,7 @@ class RandomUser:
             desk.sky.dates.field.insert(0, self.pick(TEXTS))
             desk.sky.dates.field.event_generate("<Return>")
         elif what == 2:
-            desk.follows.tabs.select(int(self.rng.integers(4)))
+            desk.follows.tabs.select(int(self.rng.integers(desk.follows.tabs.index("end"))))
         elif what == 3:
             field = desk.follows.ephemeris.fields[self.pick(("from", "to", "step"))]
             field.delete(0, "end")
@@ -232,8 +232,8 @@ class RandomUser:
                 desk.follows.orbits.tree.selection_set(self.pick(lines))
 
     def work(self) -> None:
-        """Begin a fit; wait for it, cancel it, or go on meanwhile."""
-        self.desk.commands.do(self.pick(("solve", "refine")))
+        """Begin a fit or samples; wait for it, cancel it, or go on meanwhile."""
+        self.desk.commands.do(self.pick(("solve", "refine", "sample")))
         what = self.rng.integers(3)
         if what == 0:
             self.desk.commands.do("stop")
