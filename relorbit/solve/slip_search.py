@@ -37,40 +37,30 @@ FLATTEST = 0.1  # sine of the inclination below which it is not told from 0
 FEWEST_ON_CURVE = 0.6  # share of measures that a curve must explain to be trusted
 
 
-def robust_orbit(
-    d: SlipData, starts: FloatArray | None = None, folded: bool = False
-) -> tuple[FloatArray, float]:
-    """The orbit that makes the measures likeliest, slips allowed for, and its score.
+def robust_orbits(d: SlipData) -> list[tuple[FloatArray, float]]:
+    """The orbits that make the measures likeliest, slips allowed for, the best first.
 
-    Parameters
-    ----------
-    d : SlipData
-    starts : ndarray, shape (m, 7), optional
-        Orbits to try besides those of the searches.
-    folded : bool
-        Also search without asking for quadrants.
+    Each is u, shape (7,), with minus twice the logarithm of its probability, but for a constant.
     """
     pool = [_starts(d, levelled(d.o))]
     trusted = _on_the_curve(d.o)
     if trusted is not None:
         pool.append(_starts(d, trusted))
-    if folded or d.folded:
+    if d.folded:
         pool.append(_folded_starts(d, levelled(d.o)))
-    if starts is not None:
-        pool.append(starts)
-    u, score = _best(d, np.concatenate(pool))
-    again = _starts(d, without_slips(d, u))
-    other, better = _best(d, np.concatenate([u[None], again]))
-    return (other, better) if better < score else (u, score)
+    found = _best(d, np.concatenate(pool))
+    again = _starts(d, without_slips(d, found[0][0]))
+    other = _best(d, np.concatenate([found[0][0][None], again]))
+    return sorted(found + other, key=lambda one: one[1])
 
 
-def _best(d: SlipData, pool: FloatArray) -> tuple[FloatArray, float]:
+def _best(d: SlipData, pool: FloatArray) -> list[tuple[FloatArray, float]]:
     pool = pool[np.all(np.isfinite(pool), axis=1)]
     first = pool[np.argsort(scores(d, pool), kind="stable")[:FIRST]]
     tried = [settled(d, u, 2) for u in first]
     order = np.argsort([score for _, score in tried], kind="stable")[:SECOND]
     ready = [settled(d, tried[slot][0], LAST)[0] for slot in order]
-    return min(((u, _improbability(d, u)) for u in ready), key=lambda one: one[1])
+    return sorted(((u, _improbability(d, u)) for u in ready), key=lambda one: one[1])
 
 
 def _improbability(d: SlipData, u: FloatArray) -> float:

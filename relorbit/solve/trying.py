@@ -12,6 +12,7 @@ from relorbit.measures.curve import curve_through
 from relorbit.measures.slips import KINDS, NONE, SWAPPED
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import SIZE, position_and_jacobian
+from relorbit.solve.observations import Observations
 from relorbit.solve.refine import HIGHEST_E, covariance, polar_problem, refine
 from relorbit.solve.slip_fit import (
     UNEXPLAINED,
@@ -21,15 +22,20 @@ from relorbit.solve.slip_fit import (
     likeliest,
     misfits,
     per_theta,
+    settled,
 )
 from relorbit.solve.student import student
 
-SUSPECT = 25.0  # chi2 of a measure above which it is looked at: five sigma
+SUSPECT = 21.0  # chi2 of a measure above which it is looked at: one chance in 36,000
 STRANGE = 36.0  # above which one that no slip explains is named
 ORDINARY = 18.4  # chi2 that a measure must reach with its slip undone: one chance in 10,000
 LEAST_RISE = 5.0  # of its cost over that of the measure as it stands
 MOST_ROUNDS = 10
 LEAST_FREEDOM = 0.02  # 1 - h of a measure that alone decides the orbit: it cannot be judged
+MOST_REFITS, REFIT_TURNS = 12, 6
+LEAST_WORSE = 10.0  # by which a list must be less likely without a slip, its price counted
+FEWEST_FOR_ORBIT = 9  # positions that an orbit and a slip among them need
+FEWEST_EPOCHS = 5
 FEWEST_NEIGHBOURS = 4  # for a curve to tell a place
 
 # places z, shape (k,), and their covariance in theta (radian) and rho (arcsec), shape (k, 2, 2)
@@ -91,6 +97,7 @@ def tried_against_orbit(
     """
     n = len(d.o)
     kinds, out = likeliest(d, u)
+    asked = {} if fixed is not None else refits(d, u, kinds)
     seen: set[bytes] = set()
     verdicts: dict[int, Verdict] = {}
     for _ in range(MOST_ROUNDS):
@@ -102,6 +109,8 @@ def tried_against_orbit(
             verdicts[int(row)] = judged(
                 d, int(row), fit.prediction_without(int(row)), fit.factor[row]
             )
+            if verdicts[int(row)].kind == NONE and int(row) in asked:
+                verdicts[int(row)] = asked[int(row)]
         kinds, out = np.full(n, NONE), np.zeros(n, dtype=bool)
         verdicts = {row: v for row, v in verdicts.items() if v.kind != NONE}
         for row, verdict in verdicts.items():
@@ -200,6 +209,28 @@ class _Fit:
         return predict
 
 
+def refits(d: SlipData, u: FloatArray, kinds: NDArray[np.intp]) -> dict[int, Verdict]:
+    """Verdicts on slips without which no orbit fits as well, by fits that take a measure as it is.
+
+    Where the others hardly tell a place, to first order nothing can be said of a measure; but
+    whole orbits can be compared.
+    """
+    whole = settled(d, u, 2)[1]
+    verdicts = {}
+    for row in np.flatnonzero(kinds != NONE)[:MOST_REFITS]:
+        possible = d.tried.possible.copy()
+        possible[NONE + 1 :, row] = False
+        without = replace(d, tried=replace(d.tried, possible=possible))
+        worse = settled(without, u, REFIT_TURNS)[1] - whole
+        if worse > LEAST_WORSE:
+            price = d.price[kinds[row]]
+            confidence = 1.0 / (1.0 + np.exp(-0.5 * min(worse, 700.0)))
+            verdicts[int(row)] = Verdict(
+                int(kinds[row]), float(worse + price), 0.0, float(confidence)
+            )
+    return verdicts
+
+
 def judged(d: SlipData, row: int, predict: Predict, factor: FloatArray) -> Verdict:
     """What explains one measure best, given what the others say of it."""
     possible = d.tried.possible[:, row]
@@ -246,6 +277,13 @@ def _errors(d: SlipData, row: int, separation: FloatArray) -> FloatArray:
         per[SWAPPED, 0] = min(per[SWAPPED, 0], arc * separation[SWAPPED])
         per[SWAPPED, 1] = min(per[SWAPPED, 1], np.median(d.o.per_rho[known[1]]))
     return 1.0 / np.where(per > 0.0, per, 1.0)
+
+
+def enough_for_an_orbit(o: Observations) -> bool:
+    """True where an orbit can serve as the curve, whether or not it is determined."""
+    both = (o.per_theta > 0.0) & (o.per_rho > 0.0) & (o.rho > 0.0)
+    epochs = np.unique(np.round(o.epoch[both], 3)).size
+    return bool(np.count_nonzero(both) >= FEWEST_FOR_ORBIT and epochs >= FEWEST_EPOCHS)
 
 
 def tried_against_curve(d: SlipData) -> Trial:

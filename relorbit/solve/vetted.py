@@ -11,20 +11,26 @@ from relorbit.errors import Undetermined
 from relorbit.measures.dates import other_dates
 from relorbit.measures.pair import Pair, RecordedOrbit
 from relorbit.measures.repeats import repeated
-from relorbit.measures.slips import KINDS
+from relorbit.measures.slips import KINDS, QUADRANT
 from relorbit.measures.table import Measures
 from relorbit.measures.vetting import Finding, corrected, set_aside
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import SIZE, regular_from_elements
 from relorbit.solve.left_in_equinox import left_in_another_equinox
-from relorbit.solve.observations import Observations, observe
-from relorbit.solve.slip_fit import SlipData, slip_data
-from relorbit.solve.slip_search import robust_orbit
-from relorbit.solve.trying import STRANGE, Trial, tried_against_curve, tried_against_orbit
+from relorbit.solve.observations import observe
+from relorbit.solve.quadrants import clear_majority, on_the_side_of_most
+from relorbit.solve.slip_fit import SlipData, likeliest, slip_data
+from relorbit.solve.slip_search import robust_orbits
+from relorbit.solve.trying import (
+    STRANGE,
+    Trial,
+    enough_for_an_orbit,
+    tried_against_curve,
+    tried_against_orbit,
+)
 
-FEWEST_FOR_ORBIT = 9  # positions that an orbit and a slip among them need
-FEWEST_EPOCHS = 5
+AMBIGUOUS = 0.12  # share of quadrants flipped, or unexplained, from which all are in doubt
 MOST_STRANGE = 0.15  # share of measures without explanation beyond which none is named
 
 
@@ -84,15 +90,14 @@ def _tried(d: SlipData, orbit: Elements | RecordedOrbit | None) -> Trial:
         return tried_against_orbit(d, u, fixed=_covariance(orbit, d.t0))
     if not enough_for_an_orbit(d.o):
         return tried_against_curve(d)
-    u, _ = robust_orbit(d)
+    u = robust_orbits(d)[0][0]
+    kinds, out = likeliest(d, u)
+    if np.mean((kinds == QUADRANT) | out) > AMBIGUOUS:
+        joint = replace(d, price=np.where(np.arange(d.price.size) == QUADRANT, 0.0, d.price))
+        other = on_the_side_of_most(joint, robust_orbits(joint)[0][0])[0]
+        if likeliest(joint, other)[1].sum() <= out.sum():
+            d, u = joint, other
     return tried_against_orbit(d, u)
-
-
-def enough_for_an_orbit(o: Observations) -> bool:
-    """True where an orbit can serve as the curve, whether or not it is determined."""
-    both = (o.per_theta > 0.0) & (o.per_rho > 0.0) & (o.rho > 0.0)
-    epochs = np.unique(np.round(o.epoch[both], 3)).size
-    return bool(np.count_nonzero(both) >= FEWEST_FOR_ORBIT and epochs >= FEWEST_EPOCHS)
 
 
 def _covariance(orbit: Elements | RecordedOrbit, t0: float) -> FloatArray:
@@ -121,6 +126,12 @@ def _covariance(orbit: Elements | RecordedOrbit, t0: float) -> FloatArray:
 def _findings(m: Measures, d: SlipData, trial: Trial) -> list[Finding]:
     strange = [row for row, v in trial.verdicts.items() if v.kind < 0 and v.before > STRANGE]
     too_many = len(strange) > max(1.0, MOST_STRANGE * len(d.o))
+    flipped = trial.kinds == QUADRANT
+    joint = ""
+    if np.mean(flipped) > AMBIGUOUS:
+        joint = "; the quadrants of this list are in doubt throughout and were told together"
+        if not clear_majority(flipped):
+            joint += ", and all of them turned would be as good"
     findings = []
     for row, verdict in sorted(trial.verdicts.items()):
         where = int(d.o.rows[row])
@@ -138,10 +149,11 @@ def _findings(m: Measures, d: SlipData, trial: Trial) -> list[Finding]:
             m, where, float(d.tried.epoch[k, row]), float(d.tried.theta[k, row]),
             float(d.tried.rho[k, row]), kind.text,
         )  # fmt: skip
+        text = kind.text + joint * (k == QUADRANT)
         findings.append(
             Finding(
-                where, kind.name, kind.text, before, float(np.sqrt(verdict.after)),
-                verdict.confidence, change,
+                where, kind.name, text, before, float(np.sqrt(verdict.after)), verdict.confidence,
+                change,
             )
         )  # fmt: skip
     return findings
