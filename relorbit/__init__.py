@@ -24,15 +24,19 @@ if TYPE_CHECKING:
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
+    from relorbit.measures.vetting import Finding, applied, undone
     from relorbit.orbit.elements import Elements
+    from relorbit.solve.quadrants import joint_quadrants
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
+    from relorbit.solve.vetted import vet
     from relorbit.solve.weighing import NoiseGroup
 
 _HOMES = {
     "CompanionSearch": "relorbit.derive.companion",
     "Elements": "relorbit.orbit.elements",
     "Ephemeris": "relorbit.derive.ephemeris",
+    "Finding": "relorbit.measures.vetting",
     "InputError": "relorbit.errors",
     "Judgement": "relorbit.derive.judge",
     "Measures": "relorbit.measures.table",
@@ -42,18 +46,23 @@ _HOMES = {
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
+    "applied": "relorbit.measures.vetting",
     "ephemeris": "relorbit.derive.ephemeris",
+    "joint_quadrants": "relorbit.solve.quadrants",
     "judge": "relorbit.derive.judge",
     "read": "relorbit.measures.store",
     "search_companion": "relorbit.derive.companion",
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
+    "undone": "relorbit.measures.vetting",
+    "vet": "relorbit.solve.vetted",
 }
 __all__ = [
     "CompanionSearch",
     "Elements",
     "Ephemeris",
+    "Finding",
     "InputError",
     "Judgement",
     "Measures",
@@ -64,13 +73,17 @@ __all__ = [
     "Solution",
     "Undetermined",
     "__version__",
+    "applied",
     "ephemeris",
+    "joint_quadrants",
     "judge",
     "read",
     "search_companion",
     "solve",
     "solve_many",
     "turning_points",
+    "undone",
+    "vet",
 ]
 
 
