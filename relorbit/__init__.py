@@ -25,20 +25,24 @@ if TYPE_CHECKING:
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
+    from relorbit.measures.vetting import Finding, applied, undone
     from relorbit.orbit.elements import Elements
     from relorbit.solve.kind import kind
     from relorbit.solve.posterior import Posterior
     from relorbit.solve.prior import Prior
+    from relorbit.solve.quadrants import joint_quadrants
     from relorbit.solve.sample import sample
     from relorbit.solve.saved_samples import read_samples
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
+    from relorbit.solve.vetted import vet
     from relorbit.solve.weighing import NoiseGroup
 
 _HOMES = {
     "CompanionSearch": "relorbit.derive.companion",
     "Elements": "relorbit.orbit.elements",
     "Ephemeris": "relorbit.derive.ephemeris",
+    "Finding": "relorbit.measures.vetting",
     "InputError": "relorbit.errors",
     "Judgement": "relorbit.derive.judge",
     "Measures": "relorbit.measures.table",
@@ -50,7 +54,9 @@ _HOMES = {
     "Undetermined": "relorbit.errors",
     "Posterior": "relorbit.solve.posterior",
     "Prior": "relorbit.solve.prior",
+    "applied": "relorbit.measures.vetting",
     "ephemeris": "relorbit.derive.ephemeris",
+    "joint_quadrants": "relorbit.solve.quadrants",
     "judge": "relorbit.derive.judge",
     "kind": "relorbit.solve.kind",
     "read": "relorbit.measures.store",
@@ -61,11 +67,14 @@ _HOMES = {
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
+    "undone": "relorbit.measures.vetting",
+    "vet": "relorbit.solve.vetted",
 }
 __all__ = [
     "CompanionSearch",
     "Elements",
     "Ephemeris",
+    "Finding",
     "InputError",
     "Judgement",
     "Measures",
@@ -78,7 +87,9 @@ __all__ = [
     "Solution",
     "Undetermined",
     "__version__",
+    "applied",
     "ephemeris",
+    "joint_quadrants",
     "judge",
     "kind",
     "read",
@@ -89,6 +100,8 @@ __all__ = [
     "solve",
     "solve_many",
     "turning_points",
+    "undone",
+    "vet",
 ]
 
 

@@ -20,11 +20,11 @@ from relorbit.derive.refitting import (
     influences,
     refitted,
 )
-from relorbit.derive.slips import Slip
 from relorbit.derive.surprise import RefitTest
 from relorbit.derive.verdict import Trial, measured_deviations, odd_ones, slips_of
 from relorbit.errors import Undetermined
 from relorbit.measures.pair import Pair, RecordedOrbit
+from relorbit.measures.slips import Slip
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.third_law import total_mass

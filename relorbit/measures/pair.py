@@ -18,8 +18,9 @@ from relorbit.orbit.elements import Elements
 
 _UNITS = {
     "theta": "deg", "rho": "arcsec", "theta_err": "deg", "rho_err": "arcsec", "theta_obs": "deg",
-    "aperture_m": "m", "ra_deg": "deg", "dec_deg": "deg", "pm_ra_mas_yr": "mas/yr",
-    "pm_dec_mas_yr": "mas/yr", "parallax_mas": "mas", "parallax_err_mas": "mas",
+    "rho_obs": "arcsec", "aperture_m": "m", "ra_deg": "deg", "dec_deg": "deg",
+    "pm_ra_mas_yr": "mas/yr", "pm_dec_mas_yr": "mas/yr",
+    "parallax_mas": "mas", "parallax_err_mas": "mas",
     "magnitude_primary": "mag", "magnitude_secondary": "mag",
 }  # fmt: skip
 _ALIASES = {

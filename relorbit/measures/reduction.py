@@ -99,6 +99,18 @@ def reduce_pair(pair: Pair) -> tuple[Pair, int]:
     return pair.with_measures(measures), int(np.count_nonzero(changed))
 
 
+def precession_of_date(pair: Pair, epoch: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Degrees that a reduction to J2000 adds to position angles of date, shape (n,).
+
+    The pair must have a position; `epoch` is in Julian years, shape (n,).
+    """
+    one = Measures.from_columns(
+        {"epoch": epoch, "theta": np.full(len(epoch), 180.0), "equinox": ["date"] * len(epoch)},
+        allow_any_epoch=True,
+    )
+    return reduce_pair(pair.with_measures(one))[0].measures.theta - 180.0
+
+
 def pole_angle(place: NDArray[np.float64], years: NDArray[np.float64]) -> NDArray[np.float64]:
     """Position angle of the mean pole of a year, seen from a star, from the north of J2000.
 
