@@ -127,11 +127,12 @@ def _draw(options: argparse.Namespace, posterior: Posterior) -> list[str]:
         return []
     from relorbit.derive.epochs import band_epochs
     from relorbit.derive.posterior import sampled_ephemeris
-    from relorbit.show.corner_plot import corner_of_samples
+    from relorbit.show.corner_plot import corner_of_samples, refuse_few
     from relorbit.show.files import save_figure
     from relorbit.show.sampled_plots import ephemeris_bands, mass_histogram, sheaf_of_orbits
     from relorbit.solve.residuals import residuals
 
+    refuse_few(posterior)
     pair = common.read(options)
     makers: dict[str, Any] = {
         "corner": lambda: corner_of_samples(posterior),

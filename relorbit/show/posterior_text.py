@@ -43,7 +43,7 @@ def made_of_text(p: Posterior) -> str:
         f"{len(p.observations)} measures, {p.observations.epoch[0]:.1f} to "
         f"{p.observations.epoch[-1]:.1f}; errors {ERRORS[p.errors]}"
         + (f", times {p.error_scale:.2f}" if p.error_scale > 1.0 else ""),
-        f"prior: {p.prior}; periods {low:.4g} to {high:.4g} years",
+        paragraph(f"prior: {p.prior}; periods {low:.4g} to {high:.4g} years"),
     ]
     return "\n".join(lines)
 
