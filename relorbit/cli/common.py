@@ -55,6 +55,14 @@ def add_fit(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--period-range", metavar="SHORTEST:LONGEST", help="search only these periods, in years"
     )
+    add_errors(parser)
+    parser.add_argument(
+        "--passage-near", metavar="EPOCH", help="give T as the passage nearest to this epoch"
+    )
+
+
+def add_errors(parser: argparse.ArgumentParser) -> None:
+    """Where the errors of the measures come from."""
     parser.add_argument(
         "--errors",
         choices=("from-residuals", "as-given"),
@@ -74,9 +82,6 @@ def add_fit(parser: argparse.ArgumentParser) -> None:
         default=[],
         metavar="GROUP",
         help="also fit the zero point of this group, or of all; may be given several times",
-    )
-    parser.add_argument(
-        "--passage-near", metavar="EPOCH", help="give T as the passage nearest to this epoch"
     )
 
 
@@ -140,15 +145,22 @@ def solve(pair: Pair, options: argparse.Namespace) -> Any:
     near = options.passage_near
     held = assignments(options.hold, "--hold")
     said = {
-        "epoch_range": range_of(options.epoch_range, "--epoch-range"),
         "period_range": range_of(options.period_range, "--period-range"),
         "passage_near": None if near is None else epoch_from_text(near),
+        **measured(options),
+    }
+    with waiting("solving"):
+        return solve(pair, held, **said)
+
+
+def measured(options: argparse.Namespace) -> dict[str, Any]:
+    """Which measures, with which errors: what `solve`, `sample` and `kind` take alike."""
+    return {
+        "epoch_range": range_of(options.epoch_range, "--epoch-range"),
         "errors": errors(options),
         "group_by": options.group_by,
         "offsets": options.offsets or None,
     }
-    with waiting("solving"):
-        return solve(pair, held, **said)
 
 
 def errors(options: argparse.Namespace) -> str:
@@ -162,8 +174,7 @@ def short_arc(pair: Pair, options: argparse.Namespace, error: Undetermined) -> U
     """A refusal of `solve`, with what the measures do say."""
     from relorbit.solve.short_arc import short_arc_answer
 
-    epochs = range_of(options.epoch_range, "--epoch-range")
-    return short_arc_answer(pair, error, epoch_range=epochs)
+    return short_arc_answer(pair, error, **measured(options))
 
 
 def orbit(pair: Pair, options: argparse.Namespace) -> AnyOrbit:

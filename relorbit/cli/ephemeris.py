@@ -75,17 +75,26 @@ def _from_samples(options: argparse.Namespace) -> None:
     from relorbit.derive.epochs import chosen_epochs
     from relorbit.derive.posterior import sampled_ephemeris
     from relorbit.show.posterior_text import sampled_ephemeris_table
+    from relorbit.show.text import warnings_text
     from relorbit.solve.saved_samples import read_samples
 
     if options.pair is not None or options.elements is not None:
         raise InputError("--from-samples brings the orbits itself; leave PAIR and --elements out")
     epochs = chosen_epochs(options.at, options.first, options.last, options.step, common.today())
-    found = sampled_ephemeris(read_samples(options.from_samples), epochs)
+    posterior = read_samples(options.from_samples)
+    found = sampled_ephemeris(posterior, epochs)
     if options.json:
-        common.print_json(found.to_dict())
+        content = found.to_dict()
+        content |= {"pair": posterior.pair, "effective_size": posterior.effective_size,
+                    "warnings": [one.to_dict() for one in posterior.warnings]}  # fmt: skip
+        common.print_json(content)
         return
     print(sampled_ephemeris_table(found))
-    print("\nTheta at equinox J2000. Medians, and intervals that hold 68 and 95 % of the orbits.")
+    print(f"\n{posterior.pair}: medians, and intervals that hold 68 and 95 % of "
+          f"{posterior.effective_size:.0f} effective samples.")  # fmt: skip
+    print("Theta at equinox J2000. Never point a telescope near the Sun.")
+    if posterior.warnings:
+        print("\n" + warnings_text(posterior.warnings))
 
 
 def _orbit(options: argparse.Namespace) -> AnyOrbit:

@@ -28,11 +28,16 @@ def configure(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--secondary", action="append", default=[], metavar="NAME=VALUE,...",
-        help="of the companion: parallax, parallax_err (mas), pm_ra, pm_dec, pm_err (mas a year)",
+        help="of the companion: parallax, parallax_err (mas), pm_ra, pm_dec (mas a year), "
+        "pm_err (of the difference of the two)",
     )  # fmt: skip
     parser.add_argument(
         "--speeds", metavar="SLOWEST:FASTEST", help="of passing stars, arcsec a year"
     )
+    parser.add_argument(
+        "--epoch-range", metavar="FIRST:LAST", help="use only measures of these years"
+    )
+    common.add_errors(parser)
     common.add_json(parser)
 
 
@@ -55,6 +60,7 @@ def run(options: argparse.Namespace) -> None:
             speed_range=common.range_of(options.speeds, "--speeds") or SPEEDS,
             mass=mass,
             secondary=secondary if given else None,
+            **common.measured(options),
             on_progress=report,
         )
     if options.json:

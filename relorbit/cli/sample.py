@@ -8,6 +8,7 @@ Exit status 3 says that the measures cannot be sampled, and why.
 from __future__ import annotations
 
 import argparse
+from math import isfinite
 from typing import TYPE_CHECKING, Any
 
 from relorbit.cli import common
@@ -45,9 +46,10 @@ def configure(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--epoch-range", metavar="FIRST:LAST", help="use only measures of these years"
     )
+    common.add_errors(parser)
     parser.add_argument(
         "--scale-errors", action="store_true",
-        help="enlarge the errors by the root of reduced chi2, where that is above 1",
+        help="enlarge the errors given by the root of reduced chi2, where that is above 1",
     )  # fmt: skip
     parser.add_argument("--out", metavar="FILE", help="save the samples: .ecsv or .fits")
     for name, what in FIGURES.items():
@@ -69,8 +71,11 @@ def run(options: argparse.Namespace) -> None:
         content = found.to_dict()
         content |= {
             "pair": posterior.pair, "size": posterior.size, "seed": posterior.seed,
-            "effective_size": posterior.effective_size, "pareto_k": posterior.pareto_k,
+            "effective_size": posterior.effective_size,
+            "pareto_k": posterior.pareto_k if isfinite(posterior.pareto_k) else None,
             "drawn": posterior.drawn, "prior": posterior.prior.to_dict(),
+            "errors": posterior.errors, "error_scale": posterior.error_scale,
+            "noise": [group.to_dict() for group in posterior.noise],
             "warnings": [one.to_dict() for one in posterior.warnings],
         }  # fmt: skip
         common.print_json(content)
@@ -97,7 +102,7 @@ def sampled(options: argparse.Namespace) -> Posterior:
             options.size,
             options.seed,
             prior,
-            epoch_range=common.range_of(options.epoch_range, "--epoch-range"),
+            **common.measured(options),
             scale_errors=options.scale_errors,
             on_progress=report,
         )
@@ -122,11 +127,12 @@ def _draw(options: argparse.Namespace, posterior: Posterior) -> list[str]:
         return []
     from relorbit.derive.epochs import band_epochs
     from relorbit.derive.posterior import sampled_ephemeris
-    from relorbit.show.corner_plot import corner_of_samples
+    from relorbit.show.corner_plot import corner_of_samples, refuse_few
     from relorbit.show.files import save_figure
     from relorbit.show.sampled_plots import ephemeris_bands, mass_histogram, sheaf_of_orbits
     from relorbit.solve.residuals import residuals
 
+    refuse_few(posterior)
     pair = common.read(options)
     makers: dict[str, Any] = {
         "corner": lambda: corner_of_samples(posterior),

@@ -6,7 +6,9 @@ import warnings
 from collections.abc import Callable
 
 import numpy as np
+from matplotlib.axis import Axis
 from matplotlib.figure import Figure
+from matplotlib.ticker import ScalarFormatter
 
 from relorbit.derive.posterior import quantities
 from relorbit.errors import Undetermined
@@ -95,10 +97,20 @@ def _tidy(figure: Figure, names: list[str]) -> None:
         axes.tick_params(labelsize=SMALL - 1.0, color=GREY, width=0.6, length=2.5)
         for spine in axes.spines.values():
             spine.set_linewidth(0.6)
-        if names[column] in TURNS:
-            axes.xaxis.set_major_formatter(_on_the_circle(TURNS[names[column]]))
-        if row != column and names[row] in TURNS:
-            axes.yaxis.set_major_formatter(_on_the_circle(TURNS[names[row]]))
+        # only the outer panels have figures on their scales
+        if row == count - 1:
+            _write_scale(axes.xaxis, names[column])
+        if column == 0 and row > 0:
+            _write_scale(axes.yaxis, names[row])
+
+
+def _write_scale(axis: Axis, name: str) -> None:
+    if name in TURNS:
+        axis.set_major_formatter(_on_the_circle(TURNS[name]))
+        return
+    plain = ScalarFormatter(useOffset=False)
+    plain.set_scientific(False)
+    axis.set_major_formatter(plain)
 
 
 def _on_the_circle(turn: float) -> Callable[[float, int], str]:

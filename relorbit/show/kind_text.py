@@ -5,8 +5,9 @@ from __future__ import annotations
 import math
 
 from relorbit.orbit.straight import RectilinearElements
+from relorbit.show.noise_text import noise_table
 from relorbit.show.numbers import angle, decimals_for, error_text, fixed, significant, table
-from relorbit.show.posterior_text import paragraph
+from relorbit.show.posterior_text import ERRORS, paragraph
 from relorbit.show.text import warnings_text
 from relorbit.solve.kind import DECISIVE, Decider, EscapeTest, Kind
 
@@ -19,7 +20,8 @@ def kind_text(kind: Kind) -> str:
         f"{kind.pair}: {verdict_text(kind)}",
         hypotheses_table(kind),
         paragraph(
-            "Equal odds before the measures. Orbits: " + str(kind.posterior.prior) + "; periods "
+            f"Equal odds before the measures; errors {ERRORS[kind.posterior.errors]}. Orbits: "
+            + str(kind.posterior.prior) + "; periods "
             "{:.3g} to {:.3g} years, axes {:.3g} to {:.3g} arcsec; separations of the other two "
             "likewise; speeds of passing stars {:.2g} to {:.2g} arcsec a year, uniform in ln."
             .format(*kind.posterior.prior.period_range, *kind.posterior.prior.axis_range,
@@ -28,6 +30,7 @@ def kind_text(kind: Kind) -> str:
         rectilinear_text(kind.rectilinear),
         escape_text(kind.escape),
         decider_text(kind.decider),
+        noise_table(kind.posterior.noise),
         warnings_text(kind.warnings),
     ]  # fmt: skip
     return "\n\n".join(part for part in parts if part)
@@ -54,7 +57,8 @@ def verdict_text(kind: Kind) -> str:
         "curvature not shown yet: common motion")  # fmt: skip
     bound = ""
     if kind.escape is not None:
-        bound = f", bound if the total mass exceeds {significant(kind.escape.mass_needed, 2)} suns"
+        least = significant(kind.escape.mass_needed, 2)
+        bound = f", bound only if the total mass exceeds {least} suns"
     doubt = "" if kind.odds_orbit <= DECISIVE**0.5 else ", an orbit is likely"
     return f"{motion}{bound} (odds {odds} for an orbit{doubt})"
 

@@ -6,6 +6,7 @@ import textwrap
 from collections.abc import Sequence
 
 from relorbit.derive.posterior import UNITS, Interval, PosteriorSummary, SampledEphemeris
+from relorbit.show.noise_text import noise_table
 from relorbit.show.numbers import angle, dates_of, decimals_for, fixed, significant, table
 from relorbit.show.text import WIDTH, warnings_text
 from relorbit.solve.posterior import Posterior
@@ -18,6 +19,7 @@ LABELS = {
     "next closest": "  comes next", "widest": "widest on the sky", "next widest": "  comes next",
     "mass": "total mass",
 }  # fmt: skip
+ERRORS = {"as-given": "as given", "from-residuals": "from the residuals"}
 ANGLES = {"node": 180.0, "omega": 360.0}
 
 
@@ -32,6 +34,7 @@ def posterior_text(
         made_of,
         interval_table(summary.intervals, narrow=narrow),
         modes_table(summary),
+        noise_table(posterior.noise),
         warnings_text(posterior.warnings),
     ]
     return "\n\n".join(part for part in parts if part)
@@ -44,8 +47,9 @@ def made_of_text(p: Posterior) -> str:
         f"{p.pair}: {p.effective_size:.0f} effective samples from {p.drawn} draws "
         f"(seed {p.seed}, Pareto k {fixed(p.pareto_k, 2)})",
         f"{len(p.observations)} measures, {p.observations.epoch[0]:.1f} to "
-        f"{p.observations.epoch[-1]:.1f}",
-        f"prior: {p.prior}; periods {low:.4g} to {high:.4g} years",
+        f"{p.observations.epoch[-1]:.1f}; errors {ERRORS[p.errors]}"
+        + (f", times {p.error_scale:.2f}" if p.error_scale > 1.0 else ""),
+        paragraph(f"prior: {p.prior}; periods {low:.4g} to {high:.4g} years"),
     ]
     return "\n".join(lines)
 

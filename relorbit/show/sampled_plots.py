@@ -40,6 +40,7 @@ SEEN = 0.75  # the view holds this share of the orbits, the smaller ones, whole
 POINTS = 361  # on a curve
 SINGLE_STARS = 0.08, 100.0  # solar masses: common practice, no published source
 PANEL, TIME_WIDTH = 2.55, 7.6  # inches
+BESIDE = 0.015  # of the width, left free so that no mark is cut
 BAND = {68: 0.38, 95: 0.18}  # opacity
 
 
@@ -152,11 +153,13 @@ def ephemeris_bands(
     for axes, values, name in ((above, theta, "theta"), (below, ephemeris.rho, "rho")):
         _draw_bands(axes, epochs, values)
         label = "position angle (°)" if name == "theta" else "separation (arcsec)"
-        finish(axes, float(epochs[0]), float(epochs[-1]), label)
-        seen = values.ravel().tolist()
-        limits(axes, seen, 0.0 if name == "rho" else None)
+        pad = BESIDE * float(epochs[-1] - epochs[0])
+        finish(axes, float(epochs[0]) - pad, float(epochs[-1]) + pad, label)
+        seen = values.ravel()
         if of is not None:
-            _draw_measures(axes, of, epochs, values[:, 2], name)
+            measured = _draw_measures(axes, of, epochs, values[:, 2], name)
+            seen = np.concatenate([seen, measured[of.used & np.isfinite(measured)]])
+        limits(axes, seen.tolist(), 0.0 if name == "rho" else None)
     angle_scale(above)
     above.tick_params(labelbottom=False)
     above.set_xlabel("")
@@ -185,12 +188,14 @@ def _draw_bands(axes: Axes, epochs: FloatArray, values: FloatArray) -> None:
 
 def _draw_measures(
     axes: Axes, of: Residuals, epochs: FloatArray, median: FloatArray, name: str
-) -> None:
+) -> FloatArray:
+    """Draw the measures of theta or rho; returns them on the scale of the median."""
     values, error = getattr(of, name), getattr(of, f"{name}_err")
     if name == "theta":
         values = values + 360.0 * np.rint((np.interp(of.epoch, epochs, median) - values) / 360.0)
     draw_error_bars(axes, of.epoch, values, error, of)
     draw_marks(axes, of.epoch, values, of)
+    return values
 
 
 def mass_histogram(posterior: Posterior, *, bins: int = 50) -> Figure:
@@ -229,7 +234,7 @@ def mass_histogram(posterior: Posterior, *, bins: int = 50) -> Figure:
     axes.set_xlim(outside)
     label_axes(axes, "total mass (solar masses); shaded: the range of single stars, 0.08 to 100",
                "probability a bin")  # fmt: skip
-    axes.tick_params(labelsize=SMALL)
+    axes.tick_params(which="both", labelsize=SMALL, labelcolor=INK, direction="in")
     put_title(figure, posterior.pair)
     axes.set_title(mass_line(interval(mass, posterior.weight)), fontsize=SMALL, color=GREY)
     axes.xaxis.label.set_fontsize(TEXT)

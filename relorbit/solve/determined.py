@@ -123,14 +123,7 @@ def _known(
     best = float(orbits.chi2[0])
     return {
         "P_lower_limit": profile.lower_limit(min(best, profile.chi2.min()), scale),
-        "epoch": line.epoch,
-        "theta": line.theta,
-        "theta_sigma": line.theta_sigma,
-        "rho": line.rho,
-        "rho_sigma": line.rho_sigma,
-        "motion_north": line.motion_north,
-        "motion_east": line.motion_east,
-        "motion_sigma": line.motion_sigma,
+        **line.known(),
         "chi2_straight": line.chi2,
         "chi2_orbit": best,
         "best_of_many": elements_from_regular(orbits.u[0], t0).to_dict(),

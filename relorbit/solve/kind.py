@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
@@ -15,18 +15,20 @@ from relorbit.orbit.straight import RectilinearElements, straight_sigma
 from relorbit.orbit.third_law import AU_M, JULIAN_YEAR_S, SUN_GM_M3_S2
 from relorbit.solve.flat_models import Marginal, at_rest, straight
 from relorbit.solve.limits import StraightMotion, straight_motion
-from relorbit.solve.observations import Observations, observe
+from relorbit.solve.observations import Observations
 from relorbit.solve.posterior import Posterior
 from relorbit.solve.prior import Prior
-from relorbit.solve.sample import enough, sample
+from relorbit.solve.sample import sample
 from relorbit.solve.solution import Notice
 
 SPEEDS = 1e-4, 1.0  # arcsec a year, of two stars passing: common practice, no published source
 DECISIVE, SUGGESTIVE = 100.0, 3.0  # odds
 SAMPLES, FEWEST = 1500, 1  # where no orbit fits, the few that nearly do are enough
 HEAVIEST_PAIR = 200.0  # suns; more than this binds no pair: common practice, no published source
+APART = 5.0  # errors between two parallaxes that are not of one distance
 YEARS_AHEAD = (2, 5, 10, 15, 20, 30, 50, 75, 100)
 CLEAR = 5.0  # errors apart at which two predictions differ clearly
+PLACES = 400_000  # of samples and measures at a time
 KINDS = ("rest", "straight", "orbit")
 AU_A_YEAR = AU_M / JULIAN_YEAR_S  # in metres a second
 
@@ -104,7 +106,9 @@ class Decider:
 class Secondary:
     """Parallax and proper motion of the companion, with errors; None where unknown.
 
-    Parallaxes in mas, proper motions in mas a year (that in right ascension times cos(dec)).
+    Parallaxes in mas, proper motions in mas a year (that in right ascension times cos(dec));
+    `pm_err_mas_yr` is the error of the difference from those of the primary, in each direction.
+    InputError for a parallax or a proper motion without an error above 0, or half a proper motion.
     """
 
     parallax_mas: float | None = None
@@ -112,6 +116,18 @@ class Secondary:
     pm_ra_mas_yr: float | None = None
     pm_dec_mas_yr: float | None = None
     pm_err_mas_yr: float | None = None
+
+    def __post_init__(self) -> None:
+        motions = (self.pm_ra_mas_yr is not None) + (self.pm_dec_mas_yr is not None)
+        if motions == 1:
+            raise InputError("a proper motion of the companion needs both pm_ra and pm_dec")
+        for known, error, what in (
+            (self.parallax_mas is not None, self.parallax_err_mas, "parallax"),
+            (motions == 2, self.pm_err_mas_yr, "proper motion"),
+        ):
+            if known and not (error is not None and 0.0 < error < np.inf):
+                raise InputError(f"the {what} of the companion needs an error above 0: nothing "
+                                 "can be tested without")  # fmt: skip
 
 
 @dataclass(frozen=True)
@@ -171,6 +187,10 @@ def kind(
     speed_range: tuple[float, float] = SPEEDS,
     mass: tuple[float, float] | None = None,
     secondary: Secondary | None = None,
+    epoch_range: tuple[float, float] | None = None,
+    errors: str = "as-given",
+    group_by: Sequence[str] | str | None = None,
+    offsets: Sequence[str] | str | None = None,
     on_progress: Callable[[float], None] | None = None,
 ) -> Kind:
     """Compare no relative motion, straight motion and orbit.
@@ -187,8 +207,9 @@ def kind(
         Total mass in suns and its standard deviation, for the speed of escape.
     secondary : Secondary, optional
         Parallax and proper motion of the companion.
-    on_progress : callable, optional
-        As in `sample`.
+    epoch_range, errors, group_by, offsets, on_progress
+        As in `sample`. Errors from the residuals are those that the most likely orbit leaves, and
+        hold for all three kinds.
 
     Raises
     ------
@@ -202,9 +223,11 @@ def kind(
         raise InputError(f"the speeds {low:g} to {high:g} are not a range above 0")
     if mass is not None and not (mass[0] > 0.0 and mass[1] >= 0.0):
         raise InputError(f"a mass of {mass[0]:g} +/- {mass[1]:g} suns cannot be")
-    observations = observe(pair.measures)
-    enough(observations)
-    posterior = sample(pair, SAMPLES, seed, prior, fewest=FEWEST, on_progress=on_progress)
+    posterior = sample(
+        pair, SAMPLES, seed, prior, fewest=FEWEST, epoch_range=epoch_range, errors=errors,
+        group_by=group_by, offsets=offsets, on_progress=on_progress,
+    )  # fmt: skip
+    observations = posterior.observations
     line = straight_motion(observations)
     rng = np.random.default_rng(seed)
     rho_range = posterior.prior.axis_range
@@ -218,7 +241,7 @@ def kind(
     hypotheses = _hypotheses((rest, moving, bound), observations.numbers)
     escape = _escape_test(pair, line, mass, secondary)
     odds = _odds(hypotheses)
-    verdict = _verdict(hypotheses, odds, escape)
+    verdict = _verdict(hypotheses, odds, escape, mass)
     rectilinear = line.rectilinear() if abs(line.motion) > 0.0 else None
     decider = None if verdict == "orbit" else _decider(posterior, line, observations)
     return Kind(pair.name, verdict, odds, hypotheses, line, rectilinear, escape, decider,
@@ -242,15 +265,20 @@ def _odds(hypotheses: tuple[Hypothesis, ...]) -> float:
 
 
 def _verdict(
-    hypotheses: tuple[Hypothesis, ...], odds: float, escape: EscapeTest | None
+    hypotheses: tuple[Hypothesis, ...],
+    odds: float,
+    escape: EscapeTest | None,
+    mass: tuple[float, float] | None,
 ) -> str:
     """In one word; straight motion is only called optical where it is far likelier than an orbit,
-    or too fast for any pair."""
+    or faster than the speed of escape by three standard deviations: that of the mass given, or of
+    any pair."""
     if odds > DECISIVE:
         return "orbit"
     if escape is not None:
-        surely = escape.mass_needed - 3.0 * escape.mass_needed_sigma
-        if surely > HEAVIEST_PAIR or (escape.parallax_gap or 0.0) > 5.0:
+        value, sigma = mass or (HEAVIEST_PAIR, 0.0)
+        too_fast = escape.mass_needed - value > 3.0 * np.hypot(escape.mass_needed_sigma, sigma)
+        if too_fast or (escape.parallax_gap or 0.0) > APART:
             return "optical"
     rest, moving, orbit = (one.log_evidence for one in hypotheses)
     if moving > rest and moving - orbit > np.log(DECISIVE):
@@ -296,11 +324,13 @@ def _escape_test(
 
 
 def _from_proper_motions(pair: Pair, other: Secondary) -> tuple[float, float] | None:
-    known = (pair.pm_ra_mas_yr, pair.pm_dec_mas_yr, other.pm_ra_mas_yr, other.pm_dec_mas_yr)
-    if any(value is None for value in known):
+    if other.pm_ra_mas_yr is None:
         return None
-    speed = np.hypot(known[2] - known[0], known[3] - known[1]) / 1000.0
-    return float(speed), float((other.pm_err_mas_yr or 0.0) / 1000.0)
+    if pair.pm_ra_mas_yr is None or pair.pm_dec_mas_yr is None:
+        raise InputError("the companion's proper motion needs that of the pair itself beside it, "
+                         "which its file does not have")  # fmt: skip
+    east, north = other.pm_ra_mas_yr - pair.pm_ra_mas_yr, other.pm_dec_mas_yr - pair.pm_dec_mas_yr
+    return float(np.hypot(east, north) / 1000.0), float(other.pm_err_mas_yr / 1000.0)
 
 
 def _parallax_gap(pair: Pair, other: Secondary) -> float | None:
@@ -316,7 +346,8 @@ def _decider(posterior: Posterior, line: StraightMotion, o: Observations) -> Dec
     """The first future year in which half of the orbits are clear of the straight line."""
     last = float(o.epoch[-1])
     epochs = last + np.array(YEARS_AHEAD, dtype=float)
-    rows = posterior.equal_rows(400)
+    # few samples of many measures: the memory that all their places would take
+    rows = posterior.equal_rows(int(np.clip(PLACES // (len(o) + 1), 50, 400)))
     every = np.concatenate([o.epoch, epochs])
     z = posterior.places(rows, every)
     time = o.epoch - line.epoch

@@ -61,6 +61,21 @@ class StraightMotion:
         """x + i y, arcsec a year."""
         return complex(self.motion_north, self.motion_east)
 
+    def known(self) -> dict[str, float]:
+        """Place and motion, for programs."""
+        names = ("epoch", "theta", "theta_sigma", "rho", "rho_sigma", "motion_north", "motion_east",
+                 "motion_sigma")  # fmt: skip
+        return {name: getattr(self, name) for name in names}
+
+    def text(self) -> str:
+        """Place and motion in words."""
+        direction = float(np.degrees(np.angle(self.motion)) % 360.0)
+        return (
+            f"Known: at {self.epoch:.1f} theta {self.theta:.2f} +/- {self.theta_sigma:.2g} deg, "
+            f"rho {self.rho:.3f} +/- {self.rho_sigma:.2g} arcsec, moving {abs(self.motion):.3g} "
+            f"+/- {self.motion_sigma:.2g} arcsec/yr towards {direction:.0f} deg."
+        )
+
     def rectilinear(self) -> RectilinearElements:
         """The closest point and its epoch; ValueError where nothing moves."""
         return rectilinear_elements(self.epoch, self.place, self.motion, self.covariance)

@@ -9,7 +9,7 @@ from relorbit.orbit.kepler import FloatArray
 from relorbit.solve.mixture import Mixture
 
 VALLEY = 0.03  # density between two parts, of the lower of their peaks, that divides them
-LEAST = 1e-3  # probability of a part that is one of its own
+LEAST = 5e-3  # probability of a part that is one of its own
 WIDE = 8.0  # times the median volume: such a component only holds the others together
 PLACES = 24  # looked at between two centres
 

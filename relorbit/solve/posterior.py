@@ -15,6 +15,7 @@ from relorbit.orbit.third_law import MASS_FACTOR
 from relorbit.solve.observations import Observations
 from relorbit.solve.prior import Prior
 from relorbit.solve.solution import Notice
+from relorbit.solve.weighing import NoiseGroup
 from relorbit.solve.weights import resampled
 
 if TYPE_CHECKING:
@@ -53,6 +54,10 @@ class Posterior:
     error_scale : float
         The factor by which the errors of the measures were multiplied.
     observations : Observations
+        As they were taken, with these errors.
+    errors : "as-given" or "from-residuals"
+    noise : tuple of NoiseGroup
+        What each group of measures is worth; empty for errors as given.
     warnings : tuple of Notice
     """
 
@@ -82,6 +87,8 @@ class Posterior:
     error_scale: float = 1.0
     parallax_mas: float | None = None
     parallax_err_mas: float | None = None
+    errors: str = "as-given"
+    noise: tuple[NoiseGroup, ...] = ()
     warnings: tuple[Notice, ...] = field(default=())
 
     def __len__(self) -> int:

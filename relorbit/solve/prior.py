@@ -143,7 +143,9 @@ class Prior:
         mass = MASS_FACTOR * (1000.0 * a / parallax_mas) ** 3 / P**2
         # d M = 3 M d ln a
         gap = (mass - value) / sigma
-        return np.log(3.0 * mass / (np.sqrt(2.0 * np.pi) * sigma)) - 0.5 * gap * gap
+        # what of the Gaussian lies above 0
+        above = 0.5 * math.erfc(-value / (math.sqrt(2.0) * sigma))
+        return np.log(3.0 * mass / (np.sqrt(2.0 * np.pi) * sigma * above)) - 0.5 * gap * gap
 
     def to_dict(self) -> dict[str, Any]:
         pairs = ("mass", "period_range", "axis_range")

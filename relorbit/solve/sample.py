@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import numbers
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 
@@ -14,17 +14,16 @@ from relorbit.measures.pair import Pair
 from relorbit.orbit.elements import geometry_from_projection
 from relorbit.solve.adapt import Drawn, adapted, completed
 from relorbit.solve.beginning import start
+from relorbit.solve.limits import straight_motion
+from relorbit.solve.measured import Measured, measured
 from relorbit.solve.mixture import Mixture, shape_of
 from relorbit.solve.modes import modes_of
-from relorbit.solve.observations import Observations, observe
+from relorbit.solve.observations import Observations
 from relorbit.solve.posterior import Posterior
 from relorbit.solve.prior import Prior
 from relorbit.solve.sample_warnings import gather, mass_contradiction
 from relorbit.solve.target import Target
 from relorbit.solve.weights import circular_mean, effective_size, normalised, pareto_k
-
-if TYPE_CHECKING:
-    pass
 
 MOST_SIZE = 2_000_000
 FREE_SAMPLES = 400  # without a prior mass, to see whether it contradicts the measures
@@ -39,6 +38,9 @@ def sample(
     *,
     epoch_range: tuple[float, float] | None = None,
     scale_errors: bool = False,
+    errors: str = "as-given",
+    group_by: Sequence[str] | str | None = None,
+    offsets: Sequence[str] | str | None = None,
     fewest: int = USABLE,
     on_progress: Callable[[float], None] | None = None,
 ) -> Posterior:
@@ -58,6 +60,9 @@ def sample(
         Julian years; measures outside are not used.
     scale_errors : bool
         Multiply all errors by the root of the least reduced chi2 where that is above 1.
+    errors, group_by, offsets
+        As in `solve`: with "from-residuals" the likelihood has the errors, zero points and weights
+        of groups that an orbit is found with there (see `relorbit.solve.measured`).
     fewest : int
         With fewer effective samples than this (and than `size`) there is no answer.
     on_progress : callable, optional
@@ -73,7 +78,7 @@ def sample(
         For a size, a seed or a prior that cannot be.
     Undetermined
         When the measures are all at one epoch, have too few values, or the weights of the samples
-        degenerate so that the size asked for is out of reach.
+        degenerate so that the size asked for is out of reach; `known` says what the measures do.
 
     Notes
     -----
@@ -81,75 +86,43 @@ def sample(
     adaptive importance sampling; see `conditional` and `mixture`.
     """
     size, seed = _whole(size, "size", 1, MOST_SIZE), _whole(seed, "seed", 0, 2**63)
-    observations = observe(pair.measures, epoch_range)
-    enough(observations)
-    prior = Prior.of(prior).completed(pair, observations)
     report = on_progress or (lambda share: None)
+    given = measured(
+        pair, prior, epoch_range=epoch_range, scale_errors=scale_errors, errors=errors,
+        group_by=group_by, offsets=offsets, on_progress=lambda share: report(0.0),
+    )  # fmt: skip
     contradiction = None
-    if prior.mass is not None:
-        free = sample(pair, FREE_SAMPLES, seed, replace(prior, mass=None), fewest=1,
-                      epoch_range=epoch_range, scale_errors=scale_errors)  # fmt: skip
-        contradiction = mass_contradiction(free.mass, free.weight, prior.mass)
-    parallax, scale = _parallax(pair), 1.0
-    if scale_errors:
-        scale, observations = scaled(observations, prior)
+    if given.prior.mass is not None:
+        free = replace(given, prior=replace(given.prior, mass=None))
+        free, _ = _sampled(pair, free, FREE_SAMPLES, seed, 1, lambda share: report(0.0))
+        contradiction = mass_contradiction(free.mass, free.weight, given.prior.mass)
+    try:
+        posterior, best = _sampled(pair, given, size, seed, fewest, report)
+    except Undetermined as error:
+        if contradiction is not None:
+            error = Undetermined(f"{contradiction.text}. {error.reason}", error.code, error.known)
+        raise error from None
+    return gather(posterior, pair, best, contradiction)
+
+
+def _sampled(
+    pair: Pair,
+    given: Measured,
+    size: int,
+    seed: int,
+    fewest: int,
+    report: Callable[[float], None],
+) -> tuple[Posterior, float]:
+    """Samples without warnings, and the least chi2 of any orbit."""
     target, mixture, orbits = start(
-        observations, prior, parallax, lambda share: report(0.1 * share)
+        given.observations, given.prior, _parallax(pair), lambda share: report(0.1 * share)
     )
     rng = np.random.default_rng(seed)
     first = adapted(target, mixture, rng, lambda share: report(0.1 + 0.2 * share))
     drawn, mixture = completed(target, first, size, rng, lambda share: report(0.3 + 0.7 * share))
     report(1.0)
-    try:
-        posterior = _posterior(pair, observations, target, mixture, drawn, size, seed, fewest)
-    except Undetermined as error:
-        if contradiction is not None:
-            error = Undetermined(f"{error.reason} {contradiction.text}.", error.code, error.known)
-        raise error from None
-    posterior = replace(
-        posterior, error_scale=scale, parallax_mas=pair.parallax_mas,
-        parallax_err_mas=pair.parallax_err_mas,
-    )  # fmt: skip
-    return gather(posterior, float(orbits.chi2[0]), contradiction)
-
-
-def enough(o: Observations) -> None:
-    """Refuse what no prior can help.
-
-    Raises Undetermined.
-    """
-    epochs = np.unique(np.round(o.epoch, 4)).size
-    if epochs < 2:
-        raise Undetermined(
-            "the measures are all at one epoch: no motion, and so no orbit, can be seen. Measure "
-            "again in a later season.",
-            code="too-few-epochs",
-            known={"epochs": epochs},
-        )
-    both = np.count_nonzero((o.per_theta > 0.0) & (o.per_rho > 0.0))
-    if both < 2 or o.numbers < 5:
-        raise Undetermined(
-            f"only {both} of the measures have both theta and rho, {o.numbers} values in all: "
-            "samples need at least three measures. Measure again.",
-            code="too-few-measures",
-            known={"numbers": o.numbers},
-        )
-
-
-def scaled(observations: Observations, prior: Prior) -> tuple[float, Observations]:
-    """The root of the least reduced chi2, at least 1, and the measures with errors so enlarged."""
-    from relorbit.orbit.regular import SIZE
-    from relorbit.solve.basins import find_basins
-
-    _, orbits = find_basins(observations, None, prior.period_range)
-    dof = observations.numbers - SIZE
-    scale = float(np.sqrt(max(1.0, orbits.chi2[0] / dof))) if dof > 0 else 1.0
-    enlarged = replace(
-        observations,
-        per_theta=observations.per_theta / scale,
-        per_rho=observations.per_rho / scale,
-    )
-    return scale, enlarged
+    posterior = _posterior(pair, given, target, mixture, drawn, size, seed, fewest)
+    return posterior, float(orbits.chi2[0])
 
 
 def _whole(value: Any, name: str, low: int, high: int) -> int:
@@ -167,7 +140,7 @@ def _parallax(pair: Pair) -> tuple[float, float] | None:
 
 def _posterior(
     pair: Pair,
-    observations: Observations,
+    given: Measured,
     target: Target,
     mixture: Mixture,
     drawn: Drawn,
@@ -179,7 +152,7 @@ def _posterior(
     weight = normalised(log_weight)
     reached, tail = effective_size(weight), pareto_k(weight)
     if reached < min(size, fewest):
-        raise _degenerate(reached, drawn.size, size)
+        raise _degenerate(reached, drawn.size, size, given.observations)
     keep = weight > 0.0
     top = float(log_weight.max())
     evidence = top + float(np.log(np.exp(log_weight - top).sum()))
@@ -194,7 +167,8 @@ def _posterior(
     return Posterior(
         pair.name, P, target.reference_epoch - phase * P, q[:, 1], a, i, node, omega, alpha, beta,
         weight, chi2, parallax, modes_of(mixture, y, weight), reached, tail, evidence,
-        drawn.size,        target.prior, target.reference_epoch, size, seed, observations,
+        drawn.size, target.prior, target.reference_epoch, size, seed, given.observations,
+        given.scale, pair.parallax_mas, pair.parallax_err_mas, given.errors, given.noise,
     )  # fmt: skip
 
 
@@ -202,11 +176,13 @@ def _nearest(phase: float) -> float:
     return phase - 1.0 if phase > 0.5 else phase
 
 
-def _degenerate(reached: float, drawn: int, size: int) -> Undetermined:
+def _degenerate(reached: float, drawn: int, size: int, o: Observations) -> Undetermined:
+    line = straight_motion(o)
     return Undetermined(
         f"the weights of the samples degenerate: {drawn} draws are worth {reached:.0f} "
         f"independent ones of the {size} asked for. The measures and the prior are too far apart, "
-        "or the errors of the measures too small for what they are; look at the fit with solve.",
+        "or the errors of the measures too small for what they are; look at the fit with solve. "
+        f"{line.text()}",
         code="weights-degenerate",
-        known={"effective_size": reached, "drawn": drawn},
+        known=line.known() | {"effective_size": reached, "drawn": drawn},
     )

@@ -7,22 +7,35 @@ from dataclasses import replace
 
 import numpy as np
 
+from relorbit.measures.pair import Pair
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import SIZE
 from relorbit.solve.posterior import Posterior
 from relorbit.solve.solution import Notice
+from relorbit.solve.warnings import (
+    PLAUSIBLE_MASS,
+    POOR_FIT,
+    default_errors,
+    down_weighted,
+    not_at_j2000,
+)
 from relorbit.solve.weights import quantiles
 
 FEW_VALUES = 10  # values up to which the prior has much to say
 EDGE, MUCH = 0.1, 0.05  # share of the range of ln P at its end, and probability that lies there
-POOR_FIT = 2.0
 CONTRADICTION = 3.0  # standard deviations between a prior mass and that of the measures
 
 
-def gather(posterior: Posterior, best: float, contradiction: Notice | None) -> Posterior:
+def gather(
+    posterior: Posterior, pair: Pair, best: float, contradiction: Notice | None
+) -> Posterior:
     """The posterior with its warnings; `best` is the least chi2."""
     found = [] if contradiction is None else [contradiction]
-    return replace(posterior, warnings=(*found, *_notices(posterior, best)))
+    found += [*_notices(posterior, best), *_of_the_mass(posterior, pair)]
+    found += default_errors(posterior.observations) if not posterior.noise else []
+    found += down_weighted(posterior.noise, len(posterior.observations))
+    found += not_at_j2000(pair, posterior.observations)
+    return replace(posterior, warnings=tuple(found))
 
 
 def mass_contradiction(
@@ -78,6 +91,36 @@ def _notices(p: Posterior, best: float) -> Iterator[Notice]:
             f"reduced chi2 is {best / dof:.2f} with the errors as given: the intervals are too "
             "narrow by about its root; look for slips, or scale the errors",
         )
+    if any(group.theta_offset is not None or group.rho_offset is not None for group in p.noise):
+        yield Notice(
+            "zero-points-held",
+            "the zero points of groups were taken off and held: their own errors are not in the "
+            "intervals",
+        )
     if p.error_scale > 1.0:
         yield Notice("scaled-errors", f"the errors of the measures were multiplied by "
                      f"{p.error_scale:.2f}, the root of reduced chi2")  # fmt: skip
+
+
+def _of_the_mass(p: Posterior, pair: Pair) -> Iterator[Notice]:
+    if p.mass is None:
+        if pair.parallax_mas is not None:
+            yield Notice(
+                "parallax-unusable",
+                f"the parallax of {pair.parallax_mas:g} mas is not above 0: no mass is given",
+            )
+        return
+    if p.parallax_err_mas is None:
+        yield Notice(
+            "parallax-error-missing",
+            "the parallax has no error: the intervals of the mass hold that of the orbit only",
+        )
+    low, high = PLAUSIBLE_MASS
+    share = float(p.weight[(p.mass > low) & (p.mass < high)].sum())
+    if share < MUCH:
+        yield Notice(
+            "mass-implausible",
+            f"{100 * (1 - share):.0f} % of the samples have a total mass that is not one of stars "
+            f"({low:g} to {high:g} suns): check the parallax (in mas), the separations (in arcsec) "
+            "and whether it is a pair (relorbit kind)",
+        )

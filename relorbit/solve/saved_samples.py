@@ -18,6 +18,7 @@ from relorbit.solve.observations import Observations
 from relorbit.solve.posterior import Posterior
 from relorbit.solve.prior import Prior
 from relorbit.solve.solution import Notice
+from relorbit.solve.weighing import NoiseGroup
 
 if TYPE_CHECKING:
     from astropy.table import Table
@@ -30,7 +31,7 @@ COLUMNS = {
 }  # fmt: skip
 _SCALARS = (
     "pair", "effective_size", "pareto_k", "log_evidence", "drawn", "reference_epoch", "size",
-    "seed", "error_scale", "parallax_mas", "parallax_err_mas",
+    "seed", "error_scale", "parallax_mas", "parallax_err_mas", "errors",
 )  # fmt: skip
 _MEASURED = ("epoch", "theta", "rho", "per_theta", "per_rho")
 
@@ -62,6 +63,7 @@ def _account(posterior: Posterior) -> dict[str, Any]:
         **{name: _plain(getattr(posterior, name)) for name in _SCALARS},
         "prior": posterior.prior.to_dict(),
         "warnings": [one.to_dict() for one in posterior.warnings],
+        "noise": [group.to_dict() for group in posterior.noise],
         "measures": measured,
     }
 
@@ -164,8 +166,15 @@ def _posterior(table: Table, account: dict[str, Any]) -> Posterior:
         alpha=alpha, beta=beta, mode=columns.pop("mode").astype(np.intp),
         parallax=columns.pop("parallax", None), prior=Prior(**prior),
         observations=Observations(*measured, np.arange(rows), np.zeros(rows, dtype=bool)),
+        noise=tuple(_group(one) for one in account["noise"]),
         warnings=tuple(Notice(**one) for one in account["warnings"]), **said, **columns,
     )  # fmt: skip
+
+
+def _group(said: dict[str, Any]) -> NoiseGroup:
+    fields = {name: said[name] for name in NoiseGroup.__dataclass_fields__}
+    return NoiseGroup(**{name: tuple(value) if isinstance(value, list) else value
+                         for name, value in fields.items()})  # fmt: skip
 
 
 def _projections(*columns: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

@@ -10,8 +10,10 @@ import numpy as np
 from relorbit.errors import Undetermined
 from relorbit.measures.pair import Pair
 from relorbit.orbit.kepler import FloatArray
+from relorbit.solve.limits import straight_motion
 from relorbit.solve.linear import solve_scaled
-from relorbit.solve.observations import Observations, observe
+from relorbit.solve.measured import measured
+from relorbit.solve.observations import Observations
 from relorbit.solve.sample import sample
 from relorbit.solve.target import linearised
 from relorbit.solve.weights import quantiles
@@ -84,25 +86,26 @@ def short_arc_answer(pair: Pair, error: Undetermined, **options: Any) -> Undeter
     error : Undetermined
         What `solve` raised; one with another cause comes back as it is.
     **options
-        ``epoch_range`` as given to `solve`.
+        ``epoch_range``, ``errors``, ``group_by`` and ``offsets`` as given to `solve`.
     """
     if error.code not in EXPLAINED:
         return error
-    curve = curved_motion(observe(pair.measures, options.get("epoch_range")))
-    known = error.known | {
+    try:
+        posterior = sample(pair, SAMPLES, **options)
+        observations = posterior.observations
+    except Undetermined:
+        posterior, observations = None, measured(pair, **options).observations
+    curve, line = curved_motion(observations), straight_motion(observations)
+    known = error.known | line.known() | {
         "acceleration_north": curve.acceleration.real,
         "acceleration_east": curve.acceleration.imag,
         "acceleration_sigma": curve.acceleration_sigma,
         "acceleration_seen": curve.seen,
     }
-    said = [error.reason, _motion_text(known)]
+    said = [error.reason, line.text()]
     if curve.seen:
         said.append(f"Acceleration {abs(curve.acceleration):.2g} +/- "
                     f"{curve.acceleration_sigma:.1g} arcsec/yr^2.")  # fmt: skip
-    try:
-        posterior = sample(pair, SAMPLES, epoch_range=options.get("epoch_range"))
-    except Undetermined:
-        posterior = None
     if posterior is not None:
         values = posterior.axis_cubed_over_period_squared
         low, middle, high = map(float, quantiles(values, posterior.weight, (0.025, 0.5, 0.975)))
@@ -110,14 +113,3 @@ def short_arc_answer(pair: Pair, error: Undetermined, **options: Any) -> Undeter
         said.append(f"a^3/P^2 is {low:.2g} to {high:.2g} arcsec^3/yr^2 (95 %).")
     said.append("All orbits that fit, and what they agree on: relorbit sample.")
     return Undetermined(" ".join(said), code=error.code, known=known)
-
-
-def _motion_text(known: dict[str, Any]) -> str:
-    speed = float(np.hypot(known["motion_north"], known["motion_east"]))
-    direction = float(np.degrees(np.arctan2(known["motion_east"], known["motion_north"])) % 360.0)
-    return (
-        f"Known: at {known['epoch']:.1f} theta {known['theta']:.2f} +/- "
-        f"{known['theta_sigma']:.2g} deg, rho {known['rho']:.3f} +/- {known['rho_sigma']:.2g} "
-        f"arcsec, moving {speed:.3g} +/- {known['motion_sigma']:.2g} arcsec/yr towards "
-        f"{direction:.0f} deg."
-    )

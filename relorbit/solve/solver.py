@@ -28,6 +28,7 @@ from relorbit.solve.solution import Alternative, Notice, Solution
 from relorbit.solve.warnings import gather
 from relorbit.solve.weighing import (
     Weighing,
+    errors_from_residuals,
     find_weighed_orbits,
     layout_of,
     settle_with_weights,
@@ -35,7 +36,6 @@ from relorbit.solve.weighing import (
 )
 
 MOST_ALTERNATIVES = 12
-ERRORS = ("as-given", "from-residuals")
 
 
 def solve(
@@ -97,7 +97,7 @@ def solve(
     observations = observe(pair.measures, epochs)
     require_enough(observations, held)
     weighed = None
-    if _weighed(errors, group_by, offsets):
+    if errors_from_residuals(errors, group_by, offsets):
         layout = layout_of(pair.measures, observations.rows, group_by, offsets)
         given = observations
         t0, orbits, noise, observations = find_weighed_orbits(
@@ -111,18 +111,6 @@ def solve(
     open_period = require_determined(observations, orbits, held, t0)
     found = [open_period] if open_period else []
     return _solution(pair, observations, held, t0, orbits, passage_near, found, weighed)
-
-
-def _weighed(
-    errors: str, group_by: Sequence[str] | str | None, offsets: Sequence[str] | str | None
-) -> bool:
-    if errors not in ERRORS:
-        raise InputError(f"errors cannot be {errors!r}; take {' or '.join(ERRORS)}")
-    if errors == "as-given" and (group_by is not None or offsets):
-        raise InputError(
-            "groups and zero points belong to errors taken from the residuals; ask for those"
-        )
-    return errors == "from-residuals"
 
 
 def refine_from(
@@ -148,7 +136,7 @@ def refine_from(
     start = regular_from_elements(elements, t0)
     orbits = refine(problem, start, held, LAST_STEPS)
     weighed = None
-    if _weighed(errors, group_by, offsets):
+    if errors_from_residuals(errors, group_by, offsets):
         layout = layout_of(pair.measures, observations.rows, group_by, offsets)
         starts = [held.put_back(start[None], t0)[0], orbits.u[0]]
         noise = best_of(observations, layout, starts, t0, held)

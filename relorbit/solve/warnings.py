@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from relorbit.measures.pair import Pair
 from relorbit.solve.observations import Observations
 from relorbit.solve.solution import Notice, Solution
+
+if TYPE_CHECKING:
+    from relorbit.solve.weighing import NoiseGroup
 
 ENOUGH_COVERED = 0.75  # Aitken's rule: an orbit is worth computing once this much is covered
 CLOSE_RIVAL = 9.0  # rise of scaled chi2, three standard deviations, up to which a rival is named
@@ -95,14 +99,8 @@ def _without_meaning(s: Solution) -> Iterator[Notice]:
 
 
 def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notice]:
-    assumed = int(o.assumed.sum())
-    if assumed:
-        yield Notice(
-            "default-errors",
-            f"{assumed} of {len(o)} measures bring no errors and were given those usual for their "
-            "technique",
-        )
-    if assumed == len(o) and s.reduced_chi2 < WIDE_ERRORS and s.dof >= ENOUGH_DOF:
+    yield from default_errors(o)
+    if o.assumed.all() and s.reduced_chi2 < WIDE_ERRORS and s.dof >= ENOUGH_DOF:
         yield Notice(
             "wide-errors",
             f"reduced chi2 is {s.reduced_chi2:.2f}: the measures agree better than the errors "
@@ -120,14 +118,7 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
             "the measures scatter more than their errors allow: look for slips among the largest "
             "residuals",
         )
-    down = sorted(row for group in s.noise for row in group.down_weighted)
-    if down:
-        rows = ", ".join(str(row + 1) for row in down[:8]) + (" ..." if len(down) > 8 else "")
-        yield Notice(
-            "down-weighted",
-            f"{len(down)} of {len(o)} measures lie more than three times their group's error off "
-            f"and count for little: measure {rows}; look for slips",
-        )
+    yield from down_weighted(s.noise, len(o))
     with np.errstate(invalid="ignore"):
         wrong_side = s.residuals.used & (np.abs(s.residuals.d_theta) > 90.0)
     if wrong_side.any():
@@ -137,6 +128,34 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
             f"on the other side of the primary, perhaps with a swapped quadrant: "
             f"{int(wrong_side.sum())} measured at {epochs}",
         )
+    yield from not_at_j2000(pair, o)
+
+
+def default_errors(o: Observations) -> Iterator[Notice]:
+    """Said where measures bring no errors."""
+    assumed = int(o.assumed.sum())
+    if assumed:
+        yield Notice(
+            "default-errors",
+            f"{assumed} of {len(o)} measures bring no errors and were given those usual for their "
+            "technique",
+        )
+
+
+def down_weighted(noise: Sequence[NoiseGroup], measures: int) -> Iterator[Notice]:
+    """Said where a robust fit has left measures aside."""
+    down = sorted(row for group in noise for row in group.down_weighted)
+    if down:
+        rows = ", ".join(str(row + 1) for row in down[:8]) + (" ..." if len(down) > 8 else "")
+        yield Notice(
+            "down-weighted",
+            f"{len(down)} of {measures} measures lie more than three times their group's error off "
+            f"and count for little: measure {rows}; look for slips",
+        )
+
+
+def not_at_j2000(pair: Pair, o: Observations) -> Iterator[Notice]:
+    """Said where theta could not be brought to J2000."""
     left = int(np.count_nonzero(pair.measures.equinox[o.rows] != "J2000"))
     if left:
         yield Notice(

@@ -21,6 +21,7 @@ from relorbit.solve.noise import Layout, Noise, best_of, estimate
 from relorbit.solve.observations import Observations, complete_errors
 from relorbit.solve.refine import Refined, places_of_values, polar_problem, refine, sky_problem
 
+ERRORS = ("as-given", "from-residuals")
 FOLLOWED = 6  # orbits of the first search whose noise is estimated
 LIGHT = 0.3  # relative weight below which a value is named: a residual above three sigma
 MUCH = 0.9  # change of the logarithm of an error that is worth another search
@@ -97,6 +98,19 @@ class Weighing:
     observations: Observations
     groups: tuple[NoiseGroup, ...]
     measures: Measures
+
+
+def errors_from_residuals(
+    errors: str, group_by: Sequence[str] | str | None, offsets: Sequence[str] | str | None
+) -> bool:
+    """Whether errors are to be estimated; InputError for words that say neither or both."""
+    if errors not in ERRORS:
+        raise InputError(f"errors cannot be {errors!r}; take {' or '.join(ERRORS)}")
+    if errors == "as-given" and (group_by is not None or offsets):
+        raise InputError(
+            "groups and zero points belong to errors taken from the residuals; ask for those"
+        )
+    return errors == "from-residuals"
 
 
 def layout_of(

@@ -94,6 +94,30 @@ def test_sample_of_one_epoch_is_status_3(run, tmp_path):
     assert "all at one epoch" in done.stderr
 
 
+def test_errors_from_the_residuals_on_the_command_line(run, tarn):
+    options = ("--errors", "from-residuals", "--group-by", "technique")
+    found = json.loads(run("sample", tarn, "--size", 300, *options, "--json").stdout)
+    assert found["errors"] == "from-residuals"
+    assert found["noise"][0]["across_factor"] > 0.0
+    given = json.loads(run("sample", tarn, "--size", 300, "--json").stdout)
+    assert (given["errors"], given["noise"]) == ("as-given", [])
+    told = run("kind", tarn, *options)
+    assert told.returncode == 0, told.stderr
+    assert "errors from the residuals" in " ".join(told.stdout.split())
+    refused = run("sample", tarn, "--scale-errors", *options)
+    assert refused.returncode == 2
+    assert "ask for one of the two" in refused.stderr
+
+
+def test_one_sample_is_json_and_no_picture(run, tarn):
+    done = run("sample", tarn, "--size", 1, "--json")
+    assert done.returncode == 0, done.stderr
+    assert json.loads(done.stdout)["size"] == 1
+    refused = run("sample", tarn, "--size", 5, "--bands", "b.png")
+    assert refused.returncode == 3
+    assert "are too few for a picture" in refused.stderr
+
+
 def test_kind_says_orbit_or_not_in_words(run, tarn, tmp_path):
     shown = run("kind", tarn)
     assert shown.returncode == 0, shown.stderr

@@ -41,7 +41,8 @@ def test_faster_than_vectorised_emcee_by_far():
 
 
 def test_calibrated_on_pairs_from_the_prior():
-    fixed, cut, _ = calibration.run(60, seed=5, size=300)
+    found = calibration.run(60, seed=5, size=300)
+    fixed, cut = found.fixed, found.cut
     for slot in range(len(calibration.QUANTITIES)):
         assert calibration.p_of_uniform(fixed[:, slot], bins=6) > 0.001
     # 480 ranks of 60 pairs: four standard deviations, were they independent by twos

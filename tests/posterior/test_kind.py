@@ -135,13 +135,42 @@ def test_parallaxes_and_proper_motions_of_both_stars_are_used():
     assert far.escape.speed_km_s == pytest.approx(2.5 * 4.74047, rel=1e-3)
 
 
+def test_a_mass_that_is_given_is_held_against_the_speed():
+    """0.05 arcsec a year at 20 mas and 2 arcsec: bound by 40 suns or more, but not by 2."""
+    pair = passing(parallax=20.0, parallax_err=0.1)
+    free, light, heavy = (kind(pair, mass=mass) for mass in (None, (2.0, 0.5), (60.0, 5.0)))
+    assert 3.0 < light.escape.mass_needed < 60.0
+    assert light.escape.speed_km_s > light.escape.escape_km_s
+    assert [free.verdict, light.verdict, heavy.verdict] == ["open", "optical", "open"]
+
+
+@pytest.mark.parametrize(
+    ("said", "why"),
+    [
+        ({"parallax_mas": 20.0}, "the parallax of the companion needs an error above 0"),
+        ({"pm_ra_mas_yr": 1.0, "pm_dec_mas_yr": 2.0}, "the proper motion of the companion needs"),
+        ({"pm_ra_mas_yr": 1.0, "pm_err_mas_yr": 0.1}, "needs both pm_ra and pm_dec"),
+    ],
+)
+def test_a_companion_without_errors_is_refused(said, why):
+    with pytest.raises(InputError, match=why):
+        Secondary(**said)
+
+
+def test_a_motion_of_the_companion_needs_that_of_the_pair():
+    pair = passing(parallax=20.0, parallax_err=0.1)
+    other = Secondary(pm_ra_mas_yr=1.0, pm_dec_mas_yr=2.0, pm_err_mas_yr=0.1)
+    with pytest.raises(InputError, match="that of the pair itself"):
+        kind(pair, secondary=other)
+
+
 def test_a_slow_pair_is_left_open_with_what_would_decide():
     rng = np.random.default_rng(4)
     slow = observed(Elements(1000.0, 1990.0, 0.3, 3.0, 60.0, 40.0, 100.0), EPOCH, 0.02, rng)
     found = kind(replace(slow, parallax_mas=20.0, parallax_err_mas=0.2))
     assert found.verdict == "open"
     text = " ".join(kind_text(found).split())
-    assert "curvature not shown yet: common motion, bound if the total mass exceeds" in text
+    assert "curvature not shown yet: common motion, bound only if the total mass exceeds" in text
     assert found.decider.epoch > 2020.0
     # the measure named must be able to tell the two apart
     assert found.decider.gap > 5.0 * found.decider.precision

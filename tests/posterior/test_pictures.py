@@ -30,11 +30,35 @@ def test_corner_has_a_panel_for_every_two(posterior):
 
 def test_corner_of_a_node_at_zero_has_one_peak(posterior):
     shifted = replace(posterior, node=(posterior.node - np.median(posterior.node)) % 180.0)
-    axes = corner_of_samples(shifted, ("node", "e")).axes[0]
+    axes = corner_of_samples(shifted, ("node", "e")).axes[2]
     low, high = axes.get_xlim()
     assert high - low < 30.0
     # the scale is in degrees of the circle all the same
     assert axes.xaxis.get_major_formatter()(-2.0, 0) == "178"
+
+
+def test_corner_has_figures_on_its_outer_scales_only(posterior):
+    figure = corner_of_samples(posterior)
+    figure.canvas.draw()
+
+    def written(axis) -> list[str]:
+        return [one.get_text() for one in axis.get_majorticklabels() if one.get_text()]
+
+    for slot, axes in enumerate(figure.axes):
+        row, column = divmod(slot, 8)
+        assert bool(written(axes.xaxis)) == (row == 7), (row, column)
+        assert bool(written(axes.yaxis)) == (column == 0 < row), (row, column)
+        assert axes.xaxis.get_offset_text().get_text() == ""
+        assert axes.yaxis.get_offset_text().get_text() == ""
+
+
+def test_bands_cut_no_measure(covered, posterior):
+    found = sampled_ephemeris(posterior, covered.measures.epoch[[0, -1]], 1000)
+    far = residuals(posterior.best, covered.measures)
+    far = replace(far, rho=far.rho + np.where(np.arange(len(far.rho)) == 3, 2.0, 0.0))
+    (_, below) = sorted(ephemeris_bands(found, far).axes, key=lambda one: -one.get_position().y0)
+    assert below.get_ylim()[1] > far.rho.max()
+    assert below.get_xlim()[0] < far.epoch.min() < far.epoch.max() < below.get_xlim()[1]
 
 
 def test_sheaf_draws_as_many_orbits_as_asked_for(covered, posterior):
