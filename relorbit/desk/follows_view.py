@@ -12,6 +12,7 @@ from relorbit.derive.mass import mass_budget
 from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import ORBIT, PAIR, DeskModel
 from relorbit.desk.orbits_list import OrbitsList
+from relorbit.desk.slips_page import SlipsPage
 from relorbit.desk.theme import Palette, Sizes
 from relorbit.desk.words import sentence, words_of
 from relorbit.errors import InputError
@@ -54,10 +55,12 @@ class FollowsView(ttk.Frame):
         self.mass = TextPage(self.tabs)
         self.ephemeris = EphemerisPage(self.tabs, commands, ephemeris_text, year)
         self.samples = SamplesPage(self.tabs, commands)
+        self.slips = SlipsPage(self.tabs, model, commands)
         self.notes = TextPage(self.tabs, words=True)
         for page, title in (
-            (self.orbits, "Orbits"), (self.mass, "Mass, turning points"),
-            (self.ephemeris, "Ephemeris"), (self.samples, "All that fit"), (self.notes, "Notes"),
+            (self.orbits, "Orbits"), (self.mass, "Mass, dates"),
+            (self.ephemeris, "Ephemeris"), (self.samples, "All that fit"),
+            (self.slips, "Slips"), (self.notes, "Notes"),
         ):  # fmt: skip
             self.tabs.add(page, text=title)
         self.tabs.bind("<<NotebookTabChanged>>", lambda _: self.write())
@@ -76,7 +79,8 @@ class FollowsView(ttk.Frame):
     def wear(self, palette: Palette) -> None:
         for page in (self.mass, self.notes, self.ephemeris.page, self.samples.page):
             page.wear(palette)
-        self.orbits.wear(palette)
+        for page in (self.orbits, self.slips):
+            page.wear(palette)
 
     def write(self) -> None:
         """Write the page that is seen."""
@@ -90,12 +94,19 @@ class FollowsView(ttk.Frame):
             self.ephemeris.write(self.model.elements is not None)
         elif seen is self.samples:
             self.samples.page.write(self._samples_text())
+        elif seen is self.slips:
+            self.slips.write()
         else:
             self.notes.write(self._notes_text(), self._notes_table())
 
     def show_samples(self) -> None:
         """Turn to the table of the samples."""
         self.tabs.select(self.samples)
+        self.write()
+
+    def show_slips(self) -> None:
+        """Turn to the list of slips."""
+        self.tabs.select(self.slips)
         self.write()
 
     def _samples_text(self) -> str:

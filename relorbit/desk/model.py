@@ -13,15 +13,13 @@ from typing import Any
 
 from relorbit.derive.consequences import Consequences, consequences
 from relorbit.derive.ephemeris import AnyOrbit
+from relorbit.desk.results import Results
+from relorbit.desk.topics import FILE, ORBIT, PAIR, SELECTION, VIEW
 from relorbit.errors import InputError
 from relorbit.measures import editing
 from relorbit.measures.pair import Pair, RecordedOrbit, new_pair
 from relorbit.orbit.elements import NAMES, Elements
-from relorbit.solve.posterior import Posterior
 from relorbit.solve.solution import Solution
-
-# kinds of change that views are told of
-PAIR, ORBIT, SELECTION, VIEW, FILE = "pair", "orbit", "selection", "view", "file"
 
 
 @dataclass(frozen=True)
@@ -59,7 +57,7 @@ class Step:
     state: State
 
 
-class DeskModel:
+class DeskModel(Results):
     """One pair on the desk.
 
     Attributes
@@ -135,32 +133,6 @@ class DeskModel:
             self._consequences = (self.state, consequences(self.pair, self.elements))
         return self._consequences[1]
 
-    @property
-    def samples(self) -> Posterior | None:
-        """All orbits that fit the measures as they are now; None before they are sampled."""
-        return self._samples[1] if self._sampled() else None
-
-    @property
-    def samples_text(self) -> str:
-        """What there is to say of the samples, "" while there are none."""
-        return self._samples[2] if self._sampled() else ""
-
-    @property
-    def samples_outdated(self) -> bool:
-        """Whether there are samples, of measures that have been changed since."""
-        return self._samples is not None and not self._sampled()
-
-    def _sampled(self) -> bool:
-        return self._samples is not None and _same_data(self._samples[0], self.pair)
-
-    def keep_samples(self, posterior: Posterior, text: str, pair: Pair) -> bool:
-        """Put samples of `pair` beside the orbit; False where they are not of these measures."""
-        if not _same_data(pair, self.pair):
-            return False
-        self._samples = pair, posterior, text
-        self._tell(ORBIT, VIEW)
-        return True
-
     def subscribe(self, listener: Callable[[frozenset[str]], None]) -> Callable[[], None]:
         """Be told of changes, as a set of kinds; returns what ends the subscription."""
         self._listeners.append(listener)
@@ -176,7 +148,7 @@ class DeskModel:
         self._history = [Step("", State(pair, elements))]
         self._place = 0
         self._saved_pair = pair
-        self._samples: tuple[Pair, Posterior, str] | None = None
+        self.forget_results()
         self._consequences: tuple[State, Consequences] | None = None
         self._tell(PAIR, ORBIT, SELECTION, VIEW, FILE)
 
@@ -361,9 +333,3 @@ class DeskModel:
         for listener in list(self._listeners):
             listener(frozenset(kinds))
 
-
-def _same_data(one: Pair, other: Pair) -> bool:
-    """Whether samples of one pair are samples of the other too."""
-    return one.measures is other.measures and (
-        (one.parallax_mas, one.parallax_err_mas) == (other.parallax_mas, other.parallax_err_mas)
-    )

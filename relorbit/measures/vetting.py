@@ -182,6 +182,12 @@ def undone(pair: Pair, rows: Iterable[int] | None = None) -> tuple[Pair, tuple[s
     return _with_columns(pair, columns), tuple(refused)
 
 
+def is_corrected(measures: Measures, row: int) -> bool:
+    """Whether vetting has given a measure another epoch, theta or rho."""
+    text = measures.vetted[row]
+    return bool(text) and not {"epoch", "theta", "rho"}.isdisjoint(_record(text))
+
+
 def epochs_before(measures: Measures) -> NDArray[np.float64]:
     """Julian years before vetting changed them, shape (n,)."""
     epoch = measures.epoch.copy()
