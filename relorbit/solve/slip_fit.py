@@ -18,7 +18,7 @@ from relorbit.measures.table import Measures
 from relorbit.measures.vetting import turn_of_reduction
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import regular_position
-from relorbit.solve.observations import Observations, complete_errors
+from relorbit.solve.observations import Observations, default_errors
 from relorbit.solve.refine import polar_problem, refine
 from relorbit.solve.student import student
 
@@ -82,8 +82,9 @@ def slip_data(
         m.epoch[rows], m.theta_effective[rows], m.rho[rows], turn_of_reduction(m)[rows], other[rows]
     )
     given = np.stack([np.isfinite(m.theta_err[rows]), np.isfinite(m.rho_err[rows])], axis=1)
-    theta_err, _, _ = complete_errors(m)
-    across = np.where(given[:, 0], np.nan, np.tan(np.radians(theta_err[rows])) * o.sky_rho)
+    # at a separation of 1 arcsec the error across is the tangent of that of the angle
+    usual = np.tan(np.radians(default_errors(m, np.ones(len(m)))[0][rows]))
+    across = np.where(given[:, 0], np.nan, usual)
     group = np.unique(m.technique[rows], return_inverse=True)[1]
     price = np.array([kind.price for kind in KINDS])
     if folded:
