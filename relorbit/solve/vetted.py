@@ -15,11 +15,12 @@ from relorbit.measures.slips import KINDS, QUADRANT
 from relorbit.measures.table import Measures
 from relorbit.measures.vetting import Finding, applied, corrected, set_aside
 from relorbit.orbit.elements import Elements
+from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import SIZE, regular_from_elements
 from relorbit.solve.left_in_equinox import left_in_another_equinox
 from relorbit.solve.observations import observe
-from relorbit.solve.quadrants import clear_majority, on_the_side_of_most
-from relorbit.solve.slip_fit import SlipData, likeliest, slip_data
+from relorbit.solve.quadrants import clear_majority, joint_orbits
+from relorbit.solve.slip_fit import SlipData, factors, likeliest, misfits, slip_data
 from relorbit.solve.slip_search import robust_orbits
 from relorbit.solve.trying import (
     STRANGE,
@@ -30,6 +31,7 @@ from relorbit.solve.trying import (
 )
 
 AMBIGUOUS = 0.12  # share of quadrants flipped, or unexplained, from which all are in doubt
+COARSE = 2.5  # times the errors given, from which a fit may have failed by its quadrants
 MOST_STRANGE = 0.15  # share of measures without explanation beyond which none is named
 
 
@@ -114,14 +116,21 @@ def _tried(d: SlipData, orbit: Orbit) -> Trial:
         return _tried_against_that(d, orbit)
     if not enough_for_an_orbit(d.o):
         return tried_against_curve(d)
-    u = robust_orbits(d)[0][0]
+    u, improbability = robust_orbits(d)[0]
+    if _in_doubt(d, u):
+        joint, orbits = joint_orbits(d)
+        if orbits[0][1] < improbability:
+            d, u = joint, orbits[0][0]
+    return tried_against_orbit(d, u)
+
+
+def _in_doubt(d: SlipData, u: FloatArray) -> bool:
+    """True where an orbit has so much to explain that quadrants may be in doubt throughout."""
     kinds, out = likeliest(d, u)
     if np.mean((kinds == QUADRANT) | out) > AMBIGUOUS:
-        joint = replace(d, price=np.where(np.arange(d.price.size) == QUADRANT, 0.0, d.price))
-        other = on_the_side_of_most(joint, robust_orbits(joint)[0][0])[0]
-        if likeliest(joint, other)[1].sum() <= out.sum():
-            d, u = joint, other
-    return tried_against_orbit(d, u)
+        return True
+    factor = factors(d, *misfits(d, u[None]))[0]
+    return bool((factor[d.given] > COARSE).any())
 
 
 def _tried_against_that(d: SlipData, orbit: Elements | RecordedOrbit) -> Trial:
