@@ -45,6 +45,20 @@ def clean_history(rng: np.random.Generator) -> tuple[Elements, Pair]:
     if rng.random() < 1 / 3 and epoch[0] > 1600.0:
         dates = [date_of(t) for t in epoch]
         epoch = julian_years(dates, "auto", lambda _, what: ValueError(what))
+    return truth, three_techniques(truth, epoch, dates, rng)
+
+
+def long_history(rng: np.random.Generator, count: int) -> tuple[Elements, Pair]:
+    """So many measures, spread evenly over two revolutions."""
+    truth = published_like(rng)
+    epoch = np.sort(2020.0 - rng.uniform(0.0, 2.0, count) * truth.P)
+    return truth, three_techniques(truth, epoch, [""] * count, rng)
+
+
+def three_techniques(
+    truth: Elements, epoch: np.ndarray, dates: list[str], rng: np.random.Generator
+) -> Pair:
+    """Measures of an orbit, the errors of each technique stated."""
     place = np.arange(epoch.size) / epoch.size * 3 + rng.normal(0.0, 0.4, epoch.size)
     group = np.clip(place.astype(int), 0, 2)
     largest = max(0.002, min(0.15, 0.25 * truth.a))
@@ -53,12 +67,11 @@ def clean_history(rng: np.random.Generator) -> tuple[Elements, Pair]:
     noise = error * (rng.normal(size=epoch.size) + 1j * rng.normal(size=epoch.size))
     theta, rho = polar(complex_position(truth, epoch) + noise)
     theta_err = np.degrees(np.arctan2(error, rho))
-    pair = Pair.from_arrays(
+    return Pair.from_arrays(
         epoch, theta, rho, theta_err, error, technique=np.array(TECHNIQUES)[group],
         observer=np.array(["A", "B", "C"])[group], epoch_obs=dates, ra=rng.uniform(0.0, 360.0),
         dec=rng.uniform(-70.0, 70.0), allow_any_epoch=True,
     )  # fmt: skip
-    return truth, pair
 
 
 def date_of(epoch: float) -> str:

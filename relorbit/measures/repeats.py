@@ -11,6 +11,7 @@ from relorbit.measures.table import Measures
 from relorbit.measures.vetting import Finding, set_aside
 
 NIGHT = 0.0028  # years: a little more than a day
+SAME = 1e-6  # years, degrees, arcsec
 SEASON = 0.6  # years within which the nights of one mean lie
 MOST_NIGHTS = 12
 DECIMALS = 6  # no more than these are looked at
@@ -48,10 +49,10 @@ def _as_received(m: Measures) -> tuple[NDArray[np.float64], ...]:
 
 
 def _decimals(value: float) -> int:
-    """How many decimals a value is given to."""
+    """How many decimals a value is given to, noughts at its end not counted."""
     if not np.isfinite(value):
         return DECIMALS
-    exponent = Decimal(repr(float(value))).as_tuple().exponent
+    exponent = Decimal(repr(float(value))).normalize().as_tuple().exponent
     return min(DECIMALS, max(0, -int(exponent)))
 
 
@@ -72,13 +73,14 @@ def _twice(
             coarser = min(places[0][first], places[0][second])
             if apart > max(NIGHT, _half(coarser) if coarser > 0 else 0.0):
                 break
-            if second in gone or not _alike(first, second, values, places):
+            exact = apart <= SAME
+            if second in gone or not _alike(first, second, values, places, exact):
                 continue
             early, late = sorted((first, second))
             gone.add(late)
             text = f"the same night as measure {early + 1}, entered twice"
             change = set_aside(m, late, f"same night as measure {early + 1}")
-            sure = SURE if apart <= 1e-6 else LIKELY
+            sure = SURE if exact else LIKELY
             found.append(Finding(late, "same-night", text, None, None, sure, change))
             if late == first:
                 break
@@ -86,9 +88,13 @@ def _twice(
 
 
 def _alike(
-    first: int, second: int, values: tuple[NDArray, ...], places: list[NDArray]
+    first: int, second: int, values: tuple[NDArray, ...], places: list[NDArray], exact: bool
 ) -> bool:
-    """True where theta and rho of two rows are the same but for rounding; both must be there."""
+    """True where theta and rho of two rows are the same but for rounding.
+
+    Two coarse values may well be equal by chance: unless all is exactly the same, two decimals are
+    asked for.
+    """
     fine = 0
     for column, period in ((1, 360.0), (2, 0.0)):
         a, b = values[column][first], values[column][second]
@@ -103,7 +109,8 @@ def _alike(
         if gap > _half(decimals):
             return False
         fine += decimals
-    return fine >= 2  # two coarse values may well be equal by chance
+        exact = exact and gap <= SAME
+    return exact or fine >= 2
 
 
 def _means(

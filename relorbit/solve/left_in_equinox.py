@@ -90,7 +90,7 @@ def _best_group(
     design = J[0].reshape(SIZE, -1).T
     best = None
     for group in groups:
-        members = group & may_be & ~out
+        members = group & may_be
         if np.count_nonzero(members) < FEWEST:
             continue
         column = np.zeros(r.shape[1])

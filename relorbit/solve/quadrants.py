@@ -22,11 +22,13 @@ from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import elements_from_regular
 from relorbit.solve.observations import observe
-from relorbit.solve.slip_fit import SlipData, likeliest, slip_data
-from relorbit.solve.slip_search import robust_orbits
+from relorbit.solve.slip_fit import SlipData, likeliest, settled, slip_data
+from relorbit.solve.slip_search import improbability, robust_orbits
 from relorbit.solve.trying import enough_for_an_orbit
 
 ABOUT_AS_GOOD = 9.0  # minus twice the logarithm of how much less likely an assignment may be
+LEAST_SHARE = 0.02  # of quadrants flipped
+MOST_ORBITS, TURNS = 8, 6
 CLEAR = 3.0  # standard deviations of chance that make a majority of quadrants clear
 
 
@@ -81,25 +83,41 @@ def joint_quadrants(pair: Pair) -> tuple[Assignment, ...]:
             "too few positions to tell quadrants by an orbit; measure again in a later season",
             code="too-few-positions",
         )
-    d = slip_data(pair.measures, o, folded=True)
+    d, orbits = joint_orbits(slip_data(pair.measures, o))
     found: list[Assignment] = []
     seen: list[NDArray[np.bool_]] = []
-    best = None
-    for u, improbability in robust_orbits(d):
-        best = improbability if best is None else best
-        if improbability - best > ABOUT_AS_GOOD:
+    best = orbits[0][1]
+    for u, worse in orbits:
+        if worse - best > ABOUT_AS_GOOD:
             break
-        u, flipped = on_the_side_of_most(d, u)
+        flipped = likeliest(d, u)[0] == QUADRANT
         if any(np.mean(flipped != other) < 0.02 for other in seen):
             continue
         seen.append(flipped)
-        found.append(_assignment(d, u, flipped, improbability - best))
+        found.append(_assignment(d, u, flipped, worse - best))
     if not clear_majority(seen[0]):
         flips = tuple(sorted(set(d.o.rows.tolist()) - set(found[0].flips)))
         e = found[0].elements
         other = Elements(e.P, e.T, e.e, e.a, e.i, e.node, e.omega + 180.0)
         found.insert(1, Assignment(flips, other, 0.0, True))
     return tuple(found)
+
+
+def joint_orbits(d: SlipData) -> tuple[SlipData, list[tuple[FloatArray, float]]]:
+    """The orbits of a list whose quadrants are in doubt, as those of `robust_orbits`.
+
+    At first either quadrant is as likely; then the share of those that the best orbit flips is
+    taken for their probability. The data are returned with that.
+    """
+    even = d.in_doubt(0.5)
+    found = robust_orbits(even)
+    share = float(np.mean(on_the_side_of_most(even, found[0][0])[1]))
+    d = d.in_doubt(float(np.clip(share, LEAST_SHARE, 0.5)))
+    orbits = []
+    for u, _ in found[:MOST_ORBITS]:
+        u = settled(d, on_the_side_of_most(even, u)[0], TURNS)[0]
+        orbits.append((u, improbability(d, u)))
+    return d, sorted(orbits, key=lambda one: one[1])
 
 
 def on_the_side_of_most(d: SlipData, u: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:

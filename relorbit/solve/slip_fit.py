@@ -18,7 +18,7 @@ from relorbit.measures.table import Measures
 from relorbit.measures.vetting import turn_of_reduction
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import regular_position
-from relorbit.solve.observations import Observations, complete_errors
+from relorbit.solve.observations import Observations, default_errors
 from relorbit.solve.refine import polar_problem, refine
 from relorbit.solve.student import student
 
@@ -27,6 +27,7 @@ SMALLEST_FACTOR, LARGEST_FACTOR = 0.05, 1e4
 LEAST_FACTOR_OF_GIVEN = 1.0  # errors that a list gives are taken to be no larger than given
 BLOCK = 8  # orbits at a time: bounds the memory
 STEPS = 8
+FOLDED = 4.0  # price of a flip below which quadrants are as good as unknown
 
 
 @dataclass(frozen=True)
@@ -58,12 +59,18 @@ class SlipData:
 
     @property
     def folded(self) -> bool:
-        """True where a measure may stand on either side of the primary at no price."""
-        return bool(self.price[QUADRANT] <= 0.0)
+        """True where a measure may stand on either side of the primary at little price."""
+        return bool(self.price[QUADRANT] - self.price[NONE] < FOLDED)
+
+    def in_doubt(self, share: float) -> SlipData:
+        """The same where this share of all quadrants is taken to be flipped."""
+        price = self.price.copy()
+        price[NONE], price[QUADRANT] = -2.0 * np.log([1.0 - share, share])
+        return replace(self, price=price)
 
 
 def slip_data(
-    m: Measures, o: Observations, other_date: FloatArray | None = None, folded: bool = False
+    m: Measures, o: Observations, other_date: FloatArray | None = None
 ) -> SlipData:
     """What is needed of measures and the rows of them that are fitted.
 
@@ -73,8 +80,6 @@ def slip_data(
     o : Observations, n rows of them
     other_date : ndarray, shape (N,), optional
         Epochs with day and month exchanged, NaN where the date shows none.
-    folded : bool
-        True to take the quadrant of every measure for unknown.
     """
     rows = o.rows
     other = np.full(len(m), np.nan) if other_date is None else other_date
@@ -82,12 +87,11 @@ def slip_data(
         m.epoch[rows], m.theta_effective[rows], m.rho[rows], turn_of_reduction(m)[rows], other[rows]
     )
     given = np.stack([np.isfinite(m.theta_err[rows]), np.isfinite(m.rho_err[rows])], axis=1)
-    theta_err, _, _ = complete_errors(m)
-    across = np.where(given[:, 0], np.nan, np.tan(np.radians(theta_err[rows])) * o.sky_rho)
+    # at a separation of 1 arcsec the error across is the tangent of that of the angle
+    usual = np.tan(np.radians(default_errors(m, np.ones(len(m)))[0][rows]))
+    across = np.where(given[:, 0], np.nan, usual)
     group = np.unique(m.technique[rows], return_inverse=True)[1]
     price = np.array([kind.price for kind in KINDS])
-    if folded:
-        price[QUADRANT] = 0.0
     return SlipData(o, tried, across, group, given, price, _middle(o))
 
 

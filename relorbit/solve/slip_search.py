@@ -60,10 +60,10 @@ def _best(d: SlipData, pool: FloatArray) -> list[tuple[FloatArray, float]]:
     tried = [settled(d, u, 2) for u in first]
     order = np.argsort([score for _, score in tried], kind="stable")[:SECOND]
     ready = [settled(d, tried[slot][0], LAST)[0] for slot in order]
-    return sorted(((u, _improbability(d, u)) for u in ready), key=lambda one: one[1])
+    return sorted(((u, improbability(d, u)) for u in ready), key=lambda one: one[1])
 
 
-def _improbability(d: SlipData, u: FloatArray) -> float:
+def improbability(d: SlipData, u: FloatArray) -> float:
     """Minus twice the logarithm of the evidence for the orbits around u, by Laplace's method.
 
     The prior is that of the posterior: uniform in log P, e, phase, orientation and log a, a weight

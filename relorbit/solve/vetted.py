@@ -13,14 +13,14 @@ from relorbit.measures.pair import Pair, RecordedOrbit
 from relorbit.measures.repeats import repeated
 from relorbit.measures.slips import KINDS, QUADRANT
 from relorbit.measures.table import Measures
-from relorbit.measures.vetting import Finding, corrected, set_aside
+from relorbit.measures.vetting import Finding, applied, corrected, set_aside
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
 from relorbit.orbit.regular import SIZE, regular_from_elements
 from relorbit.solve.left_in_equinox import left_in_another_equinox
 from relorbit.solve.observations import observe
-from relorbit.solve.quadrants import clear_majority, on_the_side_of_most
-from relorbit.solve.slip_fit import SlipData, likeliest, slip_data
+from relorbit.solve.quadrants import clear_majority, joint_orbits
+from relorbit.solve.slip_fit import SlipData, factors, likeliest, misfits, slip_data
 from relorbit.solve.slip_search import robust_orbits
 from relorbit.solve.trying import (
     STRANGE,
@@ -31,12 +31,16 @@ from relorbit.solve.trying import (
 )
 
 AMBIGUOUS = 0.12  # share of quadrants flipped, or unexplained, from which all are in doubt
+COARSE = 2.5  # times the errors given, from which a fit may have failed by its quadrants
 MOST_STRANGE = 0.15  # share of measures without explanation beyond which none is named
+
+
+Orbit = Elements | RecordedOrbit | None
 
 
 def vet(
     pair: Pair,
-    orbit: Elements | RecordedOrbit | None = None,
+    orbit: Orbit = None,
     *,
     on_progress: Callable[[float], None] | None = None,
 ) -> list[Finding]:
@@ -58,19 +62,43 @@ def vet(
         In the order of the measures, at most one for each.
     """
     report = on_progress or (lambda share: None)
-    measures = pair.measures
-    findings = repeated(measures)
-    d = _data(measures, {one.row for one in findings})
-    report(0.1)
-    if d is not None:
-        trial = _tried(d, orbit)
-        report(0.9)
-        found = _findings(measures, d, trial)
-        findings += found
-        if trial.u is not None:
-            findings += left_in_another_equinox(pair, d, trial, {one.row for one in findings})
+    doubled = repeated(pair.measures)
+    rows = {one.row for one in doubled}
+    found, trial, d = _against_the_others(pair, orbit, rows)
+    report(0.6)
+    left: list[Finding] = []
+    if d is not None and trial is not None and trial.u is not None:
+        sound = [one.row for one in found if one.kind != "unexplained"]
+        left = left_in_another_equinox(pair, d, trial, {*rows, *sound})
+    if left:
+        # theta of date had its part in what the others said: ask them again
+        found, _, _ = _against_the_others(applied(pair, left), orbit, rows)
+        of_date = {one.row: one for one in left}
+        found = [_after(of_date[one.row], one) if one.row in of_date else one for one in found]
+        again = {one.row for one in found}
+        left = [one for one in left if one.row not in again]
     report(1.0)
-    return sorted(findings, key=lambda one: one.row)
+    return sorted([*doubled, *found, *left], key=lambda one: one.row)
+
+
+def _against_the_others(
+    pair: Pair, orbit: Orbit, doubled: set[int]
+) -> tuple[list[Finding], Trial | None, SlipData | None]:
+    d = _data(pair.measures, doubled)
+    if d is None:
+        return [], None, None
+    trial = _tried(d, orbit)
+    return _findings(pair.measures, d, trial), trial, d
+
+
+def _after(first: Finding, then: Finding) -> Finding:
+    """A finding on a row that another has changed before, as one of the row as it was."""
+    change = dict(first.change)
+    for name, (before, after) in then.change.items():
+        change[name] = (change.get(name, (before,))[0], after)
+    return replace(
+        then, change={name: both for name, both in change.items() if both[0] != both[1]}
+    )
 
 
 def _data(measures: Measures, doubled: set[int]) -> SlipData | None:
@@ -83,44 +111,36 @@ def _data(measures: Measures, doubled: set[int]) -> SlipData | None:
     return slip_data(measures, o, other_dates(measures.epoch, measures.epoch_obs))
 
 
-def _tried(d: SlipData, orbit: Elements | RecordedOrbit | None) -> Trial:
+def _tried(d: SlipData, orbit: Orbit) -> Trial:
     if orbit is not None:
-        elements = orbit if isinstance(orbit, Elements) else orbit.elements
-        u = regular_from_elements(elements, d.t0)
-        return tried_against_orbit(d, u, fixed=_covariance(orbit, d.t0))
+        return _tried_against_that(d, orbit)
     if not enough_for_an_orbit(d.o):
         return tried_against_curve(d)
-    u = robust_orbits(d)[0][0]
-    kinds, out = likeliest(d, u)
-    if np.mean((kinds == QUADRANT) | out) > AMBIGUOUS:
-        joint = replace(d, price=np.where(np.arange(d.price.size) == QUADRANT, 0.0, d.price))
-        other = on_the_side_of_most(joint, robust_orbits(joint)[0][0])[0]
-        if likeliest(joint, other)[1].sum() <= out.sum():
-            d, u = joint, other
+    u, improbability = robust_orbits(d)[0]
+    if _in_doubt(d, u):
+        joint, orbits = joint_orbits(d)
+        if orbits[0][1] < improbability:
+            d, u = joint, orbits[0][0]
     return tried_against_orbit(d, u)
 
 
-def _covariance(orbit: Elements | RecordedOrbit, t0: float) -> FloatArray:
-    """Covariance of an orbit on record in regular coordinates at t0; zero where it has none."""
-    if isinstance(orbit, Elements) or orbit.covariance is None or orbit.reference_epoch is None:
-        return np.zeros((SIZE, SIZE))
-    start = regular_from_elements(orbit.elements, orbit.reference_epoch)
-    move = np.empty((SIZE, SIZE))
-    # the derivative of a change of reference epoch, by differences
-    from relorbit.orbit.regular import elements_from_regular
+def _in_doubt(d: SlipData, u: FloatArray) -> bool:
+    """True where an orbit has so much to explain that quadrants may be in doubt throughout."""
+    kinds, out = likeliest(d, u)
+    if np.mean((kinds == QUADRANT) | out) > AMBIGUOUS:
+        return True
+    factor = factors(d, *misfits(d, u[None]))[0]
+    return bool((factor[d.given] > COARSE).any())
 
-    size = np.maximum(np.sqrt(np.maximum(np.diag(orbit.covariance), 0.0)), 1e-12) * 1e-2
-    for slot in range(SIZE):
-        shift = np.zeros(SIZE)
-        shift[slot] = size[slot]
-        high, low = (
-            regular_from_elements(
-                elements_from_regular(start + sign * shift, orbit.reference_epoch), t0
-            )
-            for sign in (1.0, -1.0)
-        )
-        move[:, slot] = (high - low) / (2.0 * size[slot])
-    return move @ orbit.covariance @ move.T
+
+def _tried_against_that(d: SlipData, orbit: Elements | RecordedOrbit) -> Trial:
+    """Against an orbit as it stands, its errors counted where it has any."""
+    matrix, elements = np.zeros((SIZE, SIZE)), orbit
+    if isinstance(orbit, RecordedOrbit):
+        elements = orbit.elements
+        if orbit.covariance is not None and orbit.reference_epoch is not None:
+            matrix, d = np.asarray(orbit.covariance), replace(d, t0=orbit.reference_epoch)
+    return tried_against_orbit(d, regular_from_elements(elements, d.t0), fixed=matrix)
 
 
 def _findings(m: Measures, d: SlipData, trial: Trial) -> list[Finding]:
