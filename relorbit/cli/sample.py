@@ -19,13 +19,14 @@ if TYPE_CHECKING:
 EXAMPLE = """  relorbit sample pair.ecsv
   relorbit sample pair.ecsv --size 50000 --out samples.fits --corner corner.png
   relorbit sample pair.ecsv --prior thermal --orbits sheaf.pdf --bands bands.pdf
+  relorbit sample pair.ecsv --errors from-residuals
   relorbit sample pair.ecsv --prior mass=2.1:0.2 --json
 """
 FIGURES = {
     "corner": "the samples two by two",
     "orbits": "a sheaf of sampled orbits over the measures",
     "bands": "theta and rho in time with 68 and 95 %% bands",
-    "masses": "histogram of the total mass",
+    "masses": "a histogram of the total mass",
 }
 
 

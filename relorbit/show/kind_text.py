@@ -9,7 +9,7 @@ from relorbit.show.noise_text import noise_table
 from relorbit.show.numbers import angle, decimals_for, error_text, fixed, significant, table
 from relorbit.show.posterior_text import ERRORS, paragraph
 from relorbit.show.text import warnings_text
-from relorbit.solve.kind import DECISIVE, Decider, EscapeTest, Kind
+from relorbit.solve.kind import APART, DECISIVE, Decider, EscapeTest, Kind
 
 NAMES = {"rest": "at rest to each other", "straight": "straight motion", "orbit": "orbit"}
 
@@ -52,7 +52,7 @@ def verdict_text(kind: Kind) -> str:
     if kind.verdict == "orbit":
         return f"orbit shown (odds {odds} for an orbit)"
     if kind.verdict == "optical":
-        return f"optical: two stars passing (odds {odds} for an orbit)"
+        return f"optical: two stars passing{_why_optical(kind)} (odds {odds} for an orbit)"
     motion = "no relative motion shown" if rest.log_evidence > moving.log_evidence else (
         "curvature not shown yet: common motion")  # fmt: skip
     bound = ""
@@ -61,6 +61,15 @@ def verdict_text(kind: Kind) -> str:
         bound = f", bound only if the total mass exceeds {least} suns"
     doubt = "" if kind.odds_orbit <= DECISIVE**0.5 else ", an orbit is likely"
     return f"{motion}{bound} (odds {odds} for an orbit{doubt})"
+
+
+def _why_optical(kind: Kind) -> str:
+    """What shows it where the odds alone do not."""
+    if kind.odds_orbit < 1.0 / DECISIVE or kind.escape is None:
+        return ""
+    if (kind.escape.parallax_gap or 0.0) > APART:
+        return " at different distances"
+    return " too fast to be bound"
 
 
 def hypotheses_table(kind: Kind) -> str:

@@ -175,6 +175,8 @@ class Kind:
             "decider": None if self.decider is None else self.decider.to_dict(),
             "speed_range": list(self.speed_range),
             "prior": self.posterior.prior.to_dict(),
+            "errors": self.posterior.errors,
+            "noise": [group.to_dict() for group in self.posterior.noise],
             "warnings": [one.to_dict() for one in self.warnings],
         }
 

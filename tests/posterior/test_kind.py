@@ -131,6 +131,7 @@ def test_parallaxes_and_proper_motions_of_both_stars_are_used():
     assert far.escape.source == "proper motions"
     assert far.escape.parallax_gap == pytest.approx(16.0 / np.hypot(0.3, 0.2))
     assert far.verdict == "optical"
+    assert "two stars passing at different distances (odds" in kind_text(far)
     # 50 mas a year at 20 mas: 2.5 au a year
     assert far.escape.speed_km_s == pytest.approx(2.5 * 4.74047, rel=1e-3)
 
@@ -142,6 +143,7 @@ def test_a_mass_that_is_given_is_held_against_the_speed():
     assert 3.0 < light.escape.mass_needed < 60.0
     assert light.escape.speed_km_s > light.escape.escape_km_s
     assert [free.verdict, light.verdict, heavy.verdict] == ["open", "optical", "open"]
+    assert "optical: two stars passing too fast to be bound (odds" in kind_text(light)
 
 
 @pytest.mark.parametrize(
