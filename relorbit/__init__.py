@@ -21,6 +21,7 @@ if TYPE_CHECKING:
     from relorbit.derive.ephemeris import Ephemeris, ephemeris, turning_points
     from relorbit.derive.judge import Judgement, judge
     from relorbit.errors import InputError, RelorbitError, Undetermined
+    from relorbit.measures.between import Place, PlaceMeasure, between
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
@@ -38,10 +39,13 @@ _HOMES = {
     "Measures": "relorbit.measures.table",
     "NoiseGroup": "relorbit.solve.weighing",
     "Pair": "relorbit.measures.pair",
+    "Place": "relorbit.measures.between",
+    "PlaceMeasure": "relorbit.measures.between",
     "RecordedOrbit": "relorbit.measures.pair",
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
+    "between": "relorbit.measures.between",
     "ephemeris": "relorbit.derive.ephemeris",
     "judge": "relorbit.derive.judge",
     "read": "relorbit.measures.store",
@@ -59,11 +63,14 @@ __all__ = [
     "Measures",
     "NoiseGroup",
     "Pair",
+    "Place",
+    "PlaceMeasure",
     "RecordedOrbit",
     "RelorbitError",
     "Solution",
     "Undetermined",
     "__version__",
+    "between",
     "ephemeris",
     "judge",
     "read",
