@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from relorbit.derive.judge import Judgement, judge
     from relorbit.derive.posterior import sampled_ephemeris
     from relorbit.errors import InputError, RelorbitError, Undetermined
+    from relorbit.measures.between import Place, PlaceMeasure, between
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
@@ -48,6 +49,8 @@ _HOMES = {
     "Measures": "relorbit.measures.table",
     "NoiseGroup": "relorbit.solve.weighing",
     "Pair": "relorbit.measures.pair",
+    "Place": "relorbit.measures.between",
+    "PlaceMeasure": "relorbit.measures.between",
     "RecordedOrbit": "relorbit.measures.pair",
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
@@ -55,6 +58,7 @@ _HOMES = {
     "Posterior": "relorbit.solve.posterior",
     "Prior": "relorbit.solve.prior",
     "applied": "relorbit.measures.vetting",
+    "between": "relorbit.measures.between",
     "ephemeris": "relorbit.derive.ephemeris",
     "joint_quadrants": "relorbit.solve.quadrants",
     "judge": "relorbit.derive.judge",
@@ -80,6 +84,8 @@ __all__ = [
     "Measures",
     "NoiseGroup",
     "Pair",
+    "Place",
+    "PlaceMeasure",
     "Posterior",
     "Prior",
     "RecordedOrbit",
@@ -88,6 +94,7 @@ __all__ = [
     "Undetermined",
     "__version__",
     "applied",
+    "between",
     "ephemeris",
     "joint_quadrants",
     "judge",

@@ -23,6 +23,9 @@ from relorbit.solve.refine import polar_problem, refine
 from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Solution
 
+WORTH_A_SEARCH = 1.5  # sigma beyond which other basins than the orbit's are tried
+# rise of chi2 up to which an orbit is as good as the best one of the same measures
+THE_SAME = 0.5
 # rise of chi2 beyond which an orbit is not that of its own measures: chance alone exceeds it in
 # one of two hundred cases with seven unknowns (chi-square distribution)
 NOT_THEIRS = 20.3
@@ -52,24 +55,42 @@ class RefitTest:
         start = regular_from_elements(before.elements, t0)
         self.chi2 = float(refine(polar_problem(o, t0), start, None, LAST_STEPS).chi2[0])
 
-    def is_theirs(self, elements: Elements) -> bool:
+    def is_theirs(self, elements: Elements, most: float = NOT_THEIRS) -> bool:
         """True where an orbit fits the old measures about as well as the best one near it."""
         rise = residuals(elements, self.old).chi2 - self.chi2
-        return self.before.dof > SIZE and rise <= NOT_THEIRS * self.scale
+        return self.before.dof > SIZE and rise <= most * self.scale
 
     def __call__(self, rows: FloatArray) -> tuple[float, int, float]:
         """Rise of chi2 by some of the new measures, their values, and its probability."""
-        self.report()
-        joined = observe(self.old.append(self.new.select(np.asarray(rows, dtype=int))))
-        values = joined.numbers - observe(self.old).numbers
-        t0, orbits = find_basins(joined, on_progress=lambda share: self.report())
-        near = refine(
-            polar_problem(joined, t0), regular_from_elements(self.before.elements, t0), None,
-            LAST_STEPS,
-        )  # fmt: skip
-        chi2 = min(float(orbits.chi2[0]), float(near.chi2[0]))
-        rise = max(chi2 - self.chi2, 0.0) / self.scale
+        new = self.new.select(np.asarray(rows, dtype=int))
+        rise = self._rise(new, -1.0)
+        values = int(new.has_theta.sum() + new.has_rho.sum())
         return rise, values, float(chi2_distribution.sf(rise, values))
+
+    def profile(self, row: int) -> tuple[float, float]:
+        """How far off theta and rho of a new measure are, each by itself, in sigma; NaN missing.
+
+        The root of the rise of chi2: the profile of the likelihood at the value measured.
+        """
+        one = self.new.select([row])
+        gone = np.array([np.nan])
+        alone = replace(one, rho=gone, rho_err=gone), replace(one, theta=gone, theta_err=gone)
+        return tuple(
+            float(np.sqrt(self._rise(part, WORTH_A_SEARCH**2))) if has[0] else np.nan
+            for part, has in zip(alone, (one.has_theta, one.has_rho), strict=True)
+        )
+
+    def _rise(self, new: Measures, most: float) -> float:
+        """Rise of chi2 by new measures; other basins are tried where it is more than `most`."""
+        self.report()
+        joined = observe(self.old.append(new))
+        t0 = joined.mean_epoch
+        start = regular_from_elements(self.before.elements, t0)
+        chi2 = float(refine(polar_problem(joined, t0), start, None, LAST_STEPS).chi2[0])
+        if chi2 - self.chi2 > most * self.scale:
+            _, orbits = find_basins(joined, on_progress=lambda share: self.report())
+            chi2 = min(float(orbits.chi2[0]), chi2)
+        return max(chi2 - self.chi2, 0.0) / self.scale
 
 
 def _with_weights(before: Solution, old: Measures) -> Measures:

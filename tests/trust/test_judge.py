@@ -150,9 +150,10 @@ def test_a_short_arc_is_not_called_wrong_where_its_own_errors_allow_it():
 @pytest.mark.parametrize("seed", [6, 18])
 def test_a_refit_corrects_errors_of_first_order(seed):
     """Histories whose pair comes close to the primary: errors there are anything but small."""
-    _, _, probability, _, linear = judge_trial(seed, "as-given")
+    theta, rho, probability, _, linear, *by_first_order = judge_trial(seed, "as-given")
     assert linear < 1e-6
     assert probability > 0.05
+    assert max(abs(theta), abs(rho)) < min(2.4, max(map(abs, by_first_order)))
 
 
 def test_measures_that_contradict_everything_are_not_explained(recorded):
