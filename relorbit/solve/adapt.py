@@ -217,6 +217,8 @@ def completed(
             refits -= 1
             spent += drawn.size
             memory.take(mixture, drawn)
+            if not np.isfinite(np.max(memory.log_target, initial=-np.inf)):
+                return drawn, mixture
             mixture = memory.fitted(MOST_COMPONENTS, mixture.box, rng)
             drawn, reached, rate = None, 0.0, 2.0 * POOR
 

@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from relorbit.errors import InputError
+from relorbit.errors import InputError, Undetermined
 from relorbit.measures.pair import Pair
 from relorbit.orbit.regular import SIZE
 from relorbit.orbit.straight import RectilinearElements, straight_sigma
@@ -230,6 +230,7 @@ def kind(
         group_by=group_by, offsets=offsets, on_progress=on_progress,
     )  # fmt: skip
     observations = posterior.observations
+    _require_a_line(observations)
     line = straight_motion(observations)
     rng = np.random.default_rng(seed)
     rho_range = posterior.prior.axis_range
@@ -248,6 +249,17 @@ def kind(
     decider = None if verdict == "orbit" else _decider(posterior, line, observations)
     return Kind(pair.name, verdict, odds, hypotheses, line, rectilinear, escape, decider,
                 posterior, speed_range, posterior.warnings)  # fmt: skip
+
+
+def _require_a_line(o: Observations) -> None:
+    """Raise Undetermined where there are no positions at two epochs."""
+    whole = (o.per_theta > 0.0) & (o.per_rho > 0.0)
+    if np.unique(np.round(o.epoch[whole], 4)).size < 2:
+        raise Undetermined(
+            "theta and rho together were measured at one epoch only: what straight motion would "
+            "be is not known. Measure both in another season.",
+            code="too-few-positions",
+        )
 
 
 def _hypotheses(marginals: tuple[Marginal, ...], numbers: int) -> tuple[Hypothesis, ...]:

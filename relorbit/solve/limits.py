@@ -116,8 +116,8 @@ def straight_motion(observations: Observations) -> StraightMotion:
     across = np.array([-along[1], along[0]])
     return StraightMotion(
         t0, float(np.degrees(np.angle(z)) % 360.0), abs(z),
-        float(np.degrees(np.sqrt(across @ place @ across) / max(abs(z), 1e-12))),
-        float(np.sqrt(along @ place @ along)),
+        float(np.degrees(np.sqrt(max(across @ place @ across, 0.0)) / max(abs(z), 1e-12))),
+        float(np.sqrt(max(along @ place @ along, 0.0))),
         float(p[1]), float(p[3]), float(np.sqrt(0.5 * (covariance[1, 1] + covariance[3, 3]))), chi2,
         covariance,
     )  # fmt: skip

@@ -177,11 +177,13 @@ def _nearest(phase: float) -> float:
 
 
 def _degenerate(reached: float, drawn: int, size: int, o: Observations) -> Undetermined:
-    line = straight_motion(o)
+    line, bare = straight_motion(o), np.count_nonzero(o.per_theta == 0.0)
+    alone = " (rho alone, as in most rows here, leaves too many places open)"
     return Undetermined(
         f"the weights of the samples degenerate: {drawn} draws are worth {reached:.0f} "
         f"independent ones of the {size} asked for. The measures and the prior are too far apart, "
-        "or the errors of the measures too small for what they are; look at the fit with solve. "
+        "or the errors of the measures too small for what they are; look at the fit with solve"
+        f"{alone if 2 * bare > len(o) else ''}. "
         f"{line.text()}",
         code="weights-degenerate",
         known=line.known() | {"effective_size": reached, "drawn": drawn},

@@ -290,7 +290,9 @@ def weighing(measures: Measures, o: Observations, noise: Noise, weighted: Observ
 def _groups(o: Observations, noise: Noise) -> tuple[NoiseGroup, ...]:
     good = noise.corrected(o)
     with np.errstate(divide="ignore", invalid="ignore"):
-        across = np.where(good.per_theta > 0.0, good.sky_rho / good.per_theta, np.nan)
+        # a pair that was not resolved has no direction, and its theta no error in arcsec
+        known = (good.per_theta > 0.0) & (good.sky_rho > 0.0)
+        across = np.where(known, good.sky_rho / good.per_theta, np.nan)
         along = np.where(good.per_rho > 0.0, 1.0 / good.per_rho, np.nan)
     weight = np.nan_to_num(noise.weight / np.stack([across, along], axis=1) ** 2)
     found = []

@@ -129,6 +129,26 @@ def test_a_degenerate_answer_says_what_is_known_all_the_same(covered):
     assert caught.value.known["motion_sigma"] > 0.0
 
 
+def test_exact_measures_have_no_residuals_to_take_errors_from():
+    """Errors fall to nothing, and no draw is near enough: said, no fault."""
+    rho = np.abs(np.linspace(-1.0, 1.0, 11)) + 1e-6
+    theta = np.where(np.arange(11) < 5, 45.0, 225.0)
+    pair = Pair.from_arrays(np.linspace(2000.0, 2020.0, 11), theta, rho, np.full(11, 1.0),
+                            np.full(11, 0.02))  # fmt: skip
+    with pytest.raises(Undetermined, match="errors of the measures too small"):
+        sample(pair, 300, errors="from-residuals")
+
+
+def test_a_separation_of_nothing_is_weighed_too():
+    rng = np.random.default_rng(3)
+    m = observed(ORBIT, np.sort(rng.uniform(1970.0, 2020.0, 40)), 0.02, rng).measures
+    rho = np.where(np.arange(40) == 7, 0.0, m.rho)
+    pair = Pair.from_arrays(m.epoch, m.theta, rho, m.theta_err, m.rho_err)
+    (group,) = sample(pair, 300, errors="from-residuals").noise
+    assert group.share == pytest.approx(1.0)
+    assert 0.01 < group.across_arcsec < 0.04
+
+
 def test_the_density_of_a_prior_mass_is_one_in_all():
     """Also where the mass is hardly known and half of its Gaussian would lie below 0."""
     prior = Prior(mass=(1.0, 2.0), period_range=(10.0, 100.0), axis_range=(1e-3, 1e3))

@@ -187,6 +187,13 @@ def test_stars_at_rest_to_each_other_are_seen_as_such():
     assert "no relative motion shown" in kind_text(found)
 
 
+def test_kind_needs_positions_at_two_epochs():
+    pair = Pair.from_arrays([2000.0, 2000.0, 2010.0], [10.0, 11.0, 20.0], [1.0, 1.0, np.nan],
+                            [1.0] * 3, [0.02, 0.02, np.nan])  # fmt: skip
+    with pytest.raises(Undetermined, match="measured at one epoch only"):
+        kind(pair)
+
+
 def test_kind_refuses_nonsense():
     with pytest.raises(InputError, match="speeds"):
         kind(passing(), speed_range=(1.0, 0.1))
