@@ -33,7 +33,7 @@ LEAST_RISE = 5.0  # of its cost over that of the measure as it stands
 MOST_ROUNDS = 10
 LEAST_FREEDOM = 0.02  # 1 - h of a measure that alone decides the orbit: it cannot be judged
 MOST_REFITS, REFIT_TURNS = 12, 6
-LEAST_WORSE = 10.0  # by which a list must be less likely without a slip, its price counted
+LEAST_WORSE = 6.0  # by which a list must be less likely without a slip, its price counted
 FEWEST_FOR_ORBIT = 9  # positions that an orbit and a slip among them need
 FEWEST_EPOCHS = 5
 FEWEST_NEIGHBOURS = 4  # for a curve to tell a place
@@ -109,7 +109,7 @@ def tried_against_orbit(
             verdicts[int(row)] = judged(
                 d, int(row), fit.prediction_without(int(row)), fit.factor[row]
             )
-            if verdicts[int(row)].kind == NONE and int(row) in asked:
+            if verdicts[int(row)].kind <= NONE and int(row) in asked:
                 verdicts[int(row)] = asked[int(row)]
         kinds, out = np.full(n, NONE), np.zeros(n, dtype=bool)
         verdicts = {row: v for row, v in verdicts.items() if v.kind != NONE}
@@ -215,7 +215,9 @@ def refits(d: SlipData, u: FloatArray, kinds: NDArray[np.intp]) -> dict[int, Ver
     Where the others hardly tell a place, to first order nothing can be said of a measure; but
     whole orbits can be compared.
     """
-    whole = settled(d, u, 2)[1]
+    every = misfits(d, u[None])
+    factor = factors(d, *every)[0]
+    u, whole = settled(d, u, 2)
     verdicts = {}
     for row in np.flatnonzero(kinds != NONE)[:MOST_REFITS]:
         possible = d.tried.possible.copy()
@@ -225,8 +227,10 @@ def refits(d: SlipData, u: FloatArray, kinds: NDArray[np.intp]) -> dict[int, Ver
         if worse > LEAST_WORSE:
             price = d.price[kinds[row]]
             confidence = 1.0 / (1.0 + np.exp(-0.5 * min(worse, 700.0)))
+            after = sum((part[0, kinds[row], row] / factor[row, column]) ** 2
+                        for column, part in enumerate(every))  # fmt: skip
             verdicts[int(row)] = Verdict(
-                int(kinds[row]), float(worse + price), 0.0, float(confidence)
+                int(kinds[row]), float(worse + price + after), float(after), float(confidence)
             )
     return verdicts
 
