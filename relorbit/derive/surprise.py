@@ -2,12 +2,13 @@
 
 Errors carried to first order fail where an orbit is weakly known: the orbits that the measures
 allow lie along a bent valley. By how much chi2 rises when new measures join the old ones, every
-basin searched, has no such limit; for small errors it is the same number.
+basin searched, has no such limit; for small errors it is the same number. Its root for one value
+alone tells how far off that value is (the profile of the likelihood).
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -16,7 +17,7 @@ from scipy.stats import chi2 as chi2_distribution
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
-from relorbit.orbit.regular import SIZE, regular_from_elements
+from relorbit.orbit.regular import SIZE, elements_from_regular, regular_from_elements
 from relorbit.solve.basins import LAST_STEPS, find_basins
 from relorbit.solve.observations import observe
 from relorbit.solve.refine import polar_problem, refine
@@ -24,6 +25,7 @@ from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Solution
 
 WORTH_A_SEARCH = 1.5  # sigma beyond which other basins than the orbit's are tried
+MOST_STARTS = 6
 # rise of chi2 up to which an orbit is as good as the best one of the same measures
 THE_SAME = 0.5
 # rise of chi2 beyond which an orbit is not that of its own measures: chance alone exceeds it in
@@ -63,8 +65,8 @@ class RefitTest:
     def __call__(self, rows: FloatArray) -> tuple[float, int, float]:
         """Rise of chi2 by some of the new measures, their values, and its probability."""
         new = self.new.select(np.asarray(rows, dtype=int))
-        rise = self._rise(new, -1.0)
         values = int(new.has_theta.sum() + new.has_rho.sum())
+        rise = min(self._rise(new, [self.before.elements]), self._search(new)[0])
         return rise, values, float(chi2_distribution.sf(rise, values))
 
     def profile(self, row: int) -> tuple[float, float]:
@@ -74,23 +76,36 @@ class RefitTest:
         """
         one = self.new.select([row])
         gone = np.array([np.nan])
-        alone = replace(one, rho=gone, rho_err=gone), replace(one, theta=gone, theta_err=gone)
-        return tuple(
-            float(np.sqrt(self._rise(part, WORTH_A_SEARCH**2))) if has[0] else np.nan
-            for part, has in zip(alone, (one.has_theta, one.has_rho), strict=True)
-        )
+        alone = {}
+        if one.has_theta[0]:
+            alone[0] = replace(one, rho=gone, rho_err=gone)
+        if one.has_rho[0]:
+            alone[1] = replace(one, theta=gone, theta_err=gone)
+        rises = {kind: self._rise(part, [self.before.elements]) for kind, part in alone.items()}
+        if max(rises.values()) > WORTH_A_SEARCH**2:
+            # a value alone cannot raise chi2 by more than both: their orbits are starts too
+            orbits = self._search(one)[1]
+            for kind, part in alone.items():
+                rises[kind] = min(rises[kind], self._rise(part, orbits), self._search(part)[0])
+        return tuple(float(np.sqrt(rises.get(kind, np.nan))) for kind in (0, 1))
 
-    def _rise(self, new: Measures, most: float) -> float:
-        """Rise of chi2 by new measures; other basins are tried where it is more than `most`."""
+    def _rise(self, new: Measures, orbits: Sequence[Elements]) -> float:
+        """Rise of chi2 by new measures, of the best fit near some orbits."""
         self.report()
         joined = observe(self.old.append(new))
         t0 = joined.mean_epoch
-        start = regular_from_elements(self.before.elements, t0)
-        chi2 = float(refine(polar_problem(joined, t0), start, None, LAST_STEPS).chi2[0])
-        if chi2 - self.chi2 > most * self.scale:
-            _, orbits = find_basins(joined, on_progress=lambda share: self.report())
-            chi2 = min(float(orbits.chi2[0]), chi2)
-        return max(chi2 - self.chi2, 0.0) / self.scale
+        starts = np.array([regular_from_elements(one, t0) for one in orbits])
+        return self._above(refine(polar_problem(joined, t0), starts, None, LAST_STEPS).chi2.min())
+
+    def _search(self, new: Measures) -> tuple[float, list[Elements]]:
+        """The same of the best of all orbits, and the best few of these."""
+        joined = observe(self.old.append(new))
+        t0, found = find_basins(joined, on_progress=lambda share: self.report())
+        best = [elements_from_regular(u, t0) for u in found.u[:MOST_STARTS]]
+        return self._above(found.chi2[0]), best
+
+    def _above(self, chi2: float) -> float:
+        return max(float(chi2) - self.chi2, 0.0) / self.scale
 
 
 def _with_weights(before: Solution, old: Measures) -> Measures:
