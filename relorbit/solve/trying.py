@@ -32,6 +32,7 @@ ORDINARY = 18.4  # chi2 that a measure must reach with its slip undone: one chan
 LEAST_RISE = 5.0  # of its cost over that of the measure as it stands
 MOST_ROUNDS = 10
 LEAST_FREEDOM = 0.02  # 1 - h of a measure that alone decides the orbit: it cannot be judged
+UNKNOWN = 1e12  # variance of a prediction beyond which it is none
 MOST_REFITS, REFIT_TURNS = 12, 6
 LEAST_WORSE = 6.0  # by which a list must be less likely without a slip, its price counted
 FEWEST_FOR_ORBIT = 9  # positions that an orbit and a slip among them need
@@ -242,19 +243,17 @@ def judged(d: SlipData, row: int, predict: Predict, factor: FloatArray) -> Verdi
         part[:, row] for part in (d.tried.epoch, d.tried.theta, d.tried.rho)
     )
     z, V = predict(epochs)
+    # a prediction that knows nothing
+    V = np.where((np.abs(V) < UNKNOWN).all(axis=(1, 2), keepdims=True), V, UNKNOWN * np.eye(2))
     separation = np.maximum(np.abs(z), 1e-9)
     gap = np.stack([
         np.angle(np.exp(1j * np.radians(np.nan_to_num(theta))) * np.conj(z)),
         np.nan_to_num(rho) - separation,
     ], axis=1)  # fmt: skip
     sigma = _errors(d, row, separation) * factor
-    chi2, size = np.zeros(len(KINDS)), np.zeros(len(KINDS))
     has = np.array([d.o.per_theta[row] > 0.0, d.o.per_rho[row] > 0.0])
-    for k in range(len(KINDS)):
-        S = (np.diag(sigma[k] ** 2) + V[k])[np.ix_(has, has)]
-        g = gap[k][has]
-        chi2[k] = g @ np.linalg.solve(S, g)
-        size[k] = np.linalg.slogdet(S)[1]
+    S = V + sigma[:, :, None] ** 2 * np.eye(2)
+    chi2, size = _chi2_and_size(gap[:, has], S[:, has][:, :, has])
     cost = np.where(possible, chi2 + size + d.price, np.inf)
     before = float(chi2[NONE])
     if before <= SUSPECT:
@@ -267,6 +266,15 @@ def judged(d: SlipData, row: int, predict: Predict, factor: FloatArray) -> Verdi
     if chi2[best] < ORDINARY and cost[best] < min(cost[NONE] - LEAST_RISE, unexplained):
         return Verdict(best, before, float(chi2[best]), confidence)
     return Verdict(-1, before, before, 0.5)
+
+
+def _chi2_and_size(gap: FloatArray, S: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """g' S^-1 g and ln det S, shape (k,), each value in its own standard deviation first."""
+    scale = np.sqrt(np.maximum(np.diagonal(S, axis1=1, axis2=2), 1e-60))
+    own = S / (scale[:, :, None] * scale[:, None, :]) + 1e-10 * np.eye(scale.shape[1])
+    g = gap / scale
+    chi2 = np.einsum("ka,ka->k", g, np.linalg.solve(own, g[..., None])[..., 0])
+    return chi2, np.linalg.slogdet(own)[1] + 2.0 * np.log(scale).sum(axis=1)
 
 
 def _errors(d: SlipData, row: int, separation: FloatArray) -> FloatArray:
