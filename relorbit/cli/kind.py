@@ -11,7 +11,8 @@ from relorbit.cli import common
 
 EXAMPLE = """  relorbit kind pair.ecsv
   relorbit kind pair.ecsv --mass 2.1:0.4
-  relorbit kind pair.ecsv --secondary parallax=21.3,parallax_err=0.2,pm_ra=-40.1,pm_dec=12.0
+  relorbit kind pair.ecsv --secondary parallax=21.3,parallax_err=0.2
+  relorbit kind pair.ecsv --secondary pm_ra=-40.1,pm_dec=12.0,pm_err=0.3
 """
 SECONDARY = {
     "parallax": "parallax_mas", "parallax_err": "parallax_err_mas", "pm_ra": "pm_ra_mas_yr",
