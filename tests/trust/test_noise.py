@@ -4,7 +4,7 @@ import json
 
 import numpy as np
 import pytest
-from noisy_histories import gaps, noise_trial, sigmas
+from noisy_histories import gaps, noise_trial, sigmas, slip_trial
 
 from relorbit.errors import InputError
 from relorbit.measures.pair import Pair
@@ -192,3 +192,24 @@ def test_rows_with_one_value_only():
     a, b = solve(half, errors="from-residuals").noise
     assert b.along_factor is None and b.along_arcsec is None and b.across_factor is not None
     assert a.theta_weight[:5] == (None,) * 5 or None in a.theta_weight
+
+
+def test_far_slips_count_for_nothing_and_near_values_as_ever():
+    t = student()
+    z = np.array([0.0, 1.0, 3.0, 6.0, 30.0, 1000.0])
+    plain = (t.freedom + 1.0) / (t.core + z * z)
+    assert t.weight(z)[:3] == pytest.approx(plain[:3], rel=0.002)
+    # a slip of 30 sigma pulls less than a hundredth of what the t distribution alone would let it
+    assert t.weight(z)[4] < 0.01 * plain[4]
+    rise = np.diff(t.deviance(z))
+    assert np.all(rise > 0.0) and rise[-1] < 0.1
+    steps = np.linspace(0.0, 40.0, 4001)
+    slope = np.gradient(t.deviance(steps), steps)
+    assert slope[1:-1] == pytest.approx(2.0 * (steps * t.weight(steps))[1:-1], abs=0.002)
+
+
+@pytest.mark.parametrize("seed", [5003, 5011, 5020])
+def test_a_slip_of_thirty_sigma_moves_the_orbit_no_more_than_leaving_it_out(seed):
+    with_slip, left_out, as_given, _ = slip_trial(seed)
+    assert with_slip < max(1.5 * left_out, 0.25)
+    assert as_given > 2.0 * with_slip
