@@ -22,35 +22,45 @@ if TYPE_CHECKING:
     from relorbit.derive.judge import Judgement, judge
     from relorbit.derive.posterior import sampled_ephemeris
     from relorbit.errors import InputError, RelorbitError, Undetermined
+    from relorbit.measures.between import Place, PlaceMeasure, between
     from relorbit.measures.pair import Pair, RecordedOrbit
     from relorbit.measures.store import read_pair as read
     from relorbit.measures.table import Measures
+    from relorbit.measures.vetting import Finding, applied, undone
     from relorbit.orbit.elements import Elements
     from relorbit.solve.kind import kind
     from relorbit.solve.posterior import Posterior
     from relorbit.solve.prior import Prior
+    from relorbit.solve.quadrants import joint_quadrants
     from relorbit.solve.sample import sample
     from relorbit.solve.saved_samples import read_samples
     from relorbit.solve.solution import Solution
     from relorbit.solve.solver import solve
+    from relorbit.solve.vetted import vet
     from relorbit.solve.weighing import NoiseGroup
 
 _HOMES = {
     "CompanionSearch": "relorbit.derive.companion",
     "Elements": "relorbit.orbit.elements",
     "Ephemeris": "relorbit.derive.ephemeris",
+    "Finding": "relorbit.measures.vetting",
     "InputError": "relorbit.errors",
     "Judgement": "relorbit.derive.judge",
     "Measures": "relorbit.measures.table",
     "NoiseGroup": "relorbit.solve.weighing",
     "Pair": "relorbit.measures.pair",
+    "Place": "relorbit.measures.between",
+    "PlaceMeasure": "relorbit.measures.between",
     "RecordedOrbit": "relorbit.measures.pair",
     "RelorbitError": "relorbit.errors",
     "Solution": "relorbit.solve.solution",
     "Undetermined": "relorbit.errors",
     "Posterior": "relorbit.solve.posterior",
     "Prior": "relorbit.solve.prior",
+    "applied": "relorbit.measures.vetting",
+    "between": "relorbit.measures.between",
     "ephemeris": "relorbit.derive.ephemeris",
+    "joint_quadrants": "relorbit.solve.quadrants",
     "judge": "relorbit.derive.judge",
     "kind": "relorbit.solve.kind",
     "read": "relorbit.measures.store",
@@ -61,16 +71,21 @@ _HOMES = {
     "solve": "relorbit.solve",
     "solve_many": "relorbit.batch",
     "turning_points": "relorbit.derive.ephemeris",
+    "undone": "relorbit.measures.vetting",
+    "vet": "relorbit.solve.vetted",
 }
 __all__ = [
     "CompanionSearch",
     "Elements",
     "Ephemeris",
+    "Finding",
     "InputError",
     "Judgement",
     "Measures",
     "NoiseGroup",
     "Pair",
+    "Place",
+    "PlaceMeasure",
     "Posterior",
     "Prior",
     "RecordedOrbit",
@@ -78,7 +93,10 @@ __all__ = [
     "Solution",
     "Undetermined",
     "__version__",
+    "applied",
+    "between",
     "ephemeris",
+    "joint_quadrants",
     "judge",
     "kind",
     "read",
@@ -89,6 +107,8 @@ __all__ = [
     "solve",
     "solve_many",
     "turning_points",
+    "undone",
+    "vet",
 ]
 
 

@@ -147,10 +147,10 @@ def slip_trial(seed: int, size: float = 30.0) -> tuple[float, float, float, floa
     return (*change, float(unknown))
 
 
-def judge_trial(seed: int, errors: str) -> tuple[float, float, float, float, float] | None:
+def judge_trial(seed: int, errors: str) -> tuple[float, ...] | None:
     """O-C over predicted sigma of theta and rho of a measure ten years ahead, the probability of
-    so large a deviation (by a refit where it seems small), the relative error of P, and the
-    probability to first order."""
+    so large a deviation (by a refit where it seems small), the relative error of P; and to first
+    order the probability, theta and rho in sigma."""
     rng = np.random.default_rng(seed)
     truth, pair = history(rng)
     pair = labelled(pair)
@@ -168,11 +168,13 @@ def judge_trial(seed: int, errors: str) -> tuple[float, float, float, float, flo
     linear = deviations(
         solution.elements, solution.uncertainty, epoch, theta, rho, new.theta_err, new.rho_err
     )
-    found = linear.with_refits(RefitTest(solution, pair.measures, new, lambda: None))
+    refit = RefitTest(solution, pair.measures, new, lambda: None)
+    found = linear.with_profiles(refit.profile).with_refits(refit)
     return (
         float(found.theta_in_sigma[0]), float(found.rho_in_sigma[0]),
         float(found.probability[0]), solution.sigma["P"] / solution.elements.P,
-        float(linear.probability[0]),
+        float(linear.probability[0]), float(linear.theta_in_sigma[0]),
+        float(linear.rho_in_sigma[0]),
     )  # fmt: skip
 
 

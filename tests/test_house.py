@@ -101,7 +101,9 @@ def test_a_start_without_a_verb_imports_nothing_heavy(words: list[str]) -> None:
     assert not found & {*HEAVY, "numpy"}
 
 
-@pytest.mark.parametrize("verb", ["intake", "solve", "ephemeris", "residuals", "weigh", "draw"])
+@pytest.mark.parametrize(
+    "verb", ["intake", "solve", "ephemeris", "residuals", "between", "weigh", "draw"]
+)
 def test_help_of_a_verb_imports_nothing_heavy(verb: str) -> None:
     statement = (
         "from relorbit.cli.main import main\n"

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from relorbit.orbit.elements import Elements
 
 
-DEFAULT_ERRORS = "as-given"
+DEFAULT_ERRORS = "from-residuals"
 
 
 def add_pair(parser: argparse.ArgumentParser, optional: bool = False) -> None:

@@ -1,6 +1,7 @@
 """Draw a pair: the apparent orbit with the measures and their residuals, theta and rho against
-time, the residuals, the weights of measures, the periodogram of the residuals, or a sheet with
-all of it fit to print. PNG, PDF or SVG by the file's name.
+time, the residuals, the same before and after measures were flipped or set aside (strips), the
+weights of measures, the periodogram of the residuals, or a sheet with all of it fit to print. PNG,
+PDF or SVG by the file's name.
 """
 
 from __future__ import annotations
@@ -12,12 +13,13 @@ from relorbit.cli import common
 
 if TYPE_CHECKING:
     from relorbit.measures.pair import Pair
+    from relorbit.orbit.elements import Elements
 
 EXAMPLE = """  relorbit draw pair.ecsv --out orbit.png
   relorbit draw pair.ecsv --figure sheet --out sheet.pdf
   relorbit draw pair.ecsv --orientation eyepiece --years 20 --out finder.svg
 """
-FIGURES = ("orbit", "time", "residuals", "weights", "periodogram", "sheet")
+FIGURES = ("orbit", "time", "residuals", "strips", "weights", "periodogram", "sheet")
 SHEET_YEARS = 10
 
 
@@ -83,6 +85,8 @@ def _figure(options: argparse.Namespace, pair: Pair) -> Any:
         return periodogram(common.companion(pair, orbit, options), title=pair.name)
     if options.figure == "residuals":
         return residuals_over_time(residuals(elements, pair.measures), title=pair.name)
+    if options.figure == "strips":
+        return _strips(elements, pair)
     if options.figure == "time":
         return over_time(elements, pair.measures, ephemeris=future, title=pair.name)
     others = {}
@@ -95,6 +99,20 @@ def _figure(options: argparse.Namespace, pair: Pair) -> Any:
         title=pair.name,
         others=others,
         future=future,
+    )
+
+
+def _strips(elements: Elements, pair: Pair) -> Any:
+    """The list as it was before any measure was flipped or set aside, and as it is."""
+    from relorbit.measures.editing import with_flip, with_use
+    from relorbit.show.strips_plot import strips_before_after
+    from relorbit.solve.residuals import residuals
+
+    m = pair.measures
+    rows = [k for k in range(len(m)) if m.flip[k] or not m.use[k]]
+    before = with_use(with_flip(pair, [k for k in rows if m.flip[k]]), rows, True)
+    return strips_before_after(
+        residuals(elements, before.measures), residuals(elements, m), rows, title=pair.name
     )
 
 

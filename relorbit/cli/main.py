@@ -24,6 +24,8 @@ VERBS = {
     "ephemeris": "positions at future or past dates, with errors",
     "residuals": "observed minus computed, for every measure",
     "judge": "new measures against the orbit on record, and the orbit against them",
+    "vet": "slips among the measures: found, put right, taken back",
+    "between": "a measure from two catalogue positions",
     "weigh": "the total mass and what its error is made of",
     "draw": "figures: the apparent orbit, the motion in time, the residuals, a sheet to print",
     "demo": "do the whole job on a shipped example",

@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
 EXAMPLE = """  relorbit residuals pair.ecsv
   relorbit residuals measures.csv --fresh --json
-  relorbit residuals pair.ecsv --errors from-residuals --companion
+  relorbit residuals pair.ecsv --fresh --companion
 """
 
 

@@ -1,5 +1,7 @@
 """Find the orbit of a pair without a starting guess: elements with errors, the total mass where
-the parallax is known, the other orbits that fit, and what each technique's residuals say.
+the parallax is known, the other orbits that fit, and what the measures of each observer and
+technique are worth. Their errors are estimated from the residuals together with the orbit, so
+that slips count for little; --errors as-given takes those that the measures bring.
 
 Exit status 3 says that the measures do not determine an orbit, and why.
 """
@@ -20,6 +22,7 @@ if TYPE_CHECKING:
 
 EXAMPLE = """  relorbit solve pair.ecsv
   relorbit solve measures.csv --hold e=0 --json
+  relorbit solve pair.ecsv --errors as-given
   relorbit solve pair.ecsv --record "first orbit" --note "before the new season"
 """
 

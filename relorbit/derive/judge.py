@@ -20,11 +20,11 @@ from relorbit.derive.refitting import (
     influences,
     refitted,
 )
-from relorbit.derive.slips import Slip
-from relorbit.derive.surprise import RefitTest
+from relorbit.derive.surprise import THE_SAME, RefitTest
 from relorbit.derive.verdict import Trial, measured_deviations, odd_ones, slips_of
 from relorbit.errors import Undetermined
 from relorbit.measures.pair import Pair, RecordedOrbit
+from relorbit.measures.slips import Slip
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.third_law import total_mass
@@ -48,7 +48,9 @@ class JudgedMeasure:
     d_theta, d_rho : float
         Observed minus predicted.
     theta_in_sigma, rho_in_sigma : float
-        The same over the errors of measure and prediction together.
+        The same over the errors of measure and prediction together. Where the orbit is that of
+        the measures on record, the error of a prediction is that of the profile of their
+        likelihood on the side where the measure lies, else that of the covariance.
     chi2, values, probability : float, int, float
         Of theta and rho together, and of so large a chi2 by chance; where that seems small, by
         the rise of chi2 in a refit instead of errors to first order.
@@ -204,6 +206,8 @@ def judge(
     if before is not None:
         refit = RefitTest(before, pair.measures, fresh.measures, lambda: report(0.1))
         if refit.is_theirs(elements) and _errors_like(chosen, before):
+            if refit.is_theirs(elements, THE_SAME):
+                found = found.with_profiles(refit.profile)
             found = found.with_refits(refit)
     slips = slips_of(elements, uncertainty, fresh.measures, found)
     solution, why = _with_the_new(fresh, elements, errors, lambda share: report(0.1 + 0.3 * share))

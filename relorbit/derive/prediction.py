@@ -16,6 +16,10 @@ from relorbit.orbit.regular import Uncertainty, position_and_jacobian, regular_f
 WORTH_A_REFIT = 0.05  # probability below which errors to first order are not trusted
 # rows of the measures -> chi2, values, probability
 Refit = Callable[[FloatArray], tuple[float, int, float]]
+# row of the measures -> how far off its theta and its rho are alone, in sigma, 0 or more
+Profile = Callable[[int], tuple[float, float]]
+MOST_PROFILES = 100  # measures, those farthest off, that are told by profiles
+ON_THE_SPOT = 0.1  # sigma: so near the prediction no side of it is measured
 WIDEST_ANGLE = 180.0  # degrees: an angle known worse than this is not known
 
 
@@ -26,7 +30,8 @@ class Deviations:
     Attributes
     ----------
     theta, rho : predicted, degrees and arcsec.
-    theta_sigma, rho_sigma : error of the prediction; 0 where the orbit brings none.
+    theta_sigma, rho_sigma : error of the prediction; 0 where the orbit brings none; by profiles
+        that on the side where the measure lies.
     d_theta, d_rho : observed minus predicted; NaN where not measured.
     theta_in_sigma, rho_in_sigma : over the errors of prediction and measure together.
     chi2 : of each measure, the correlation of theta and rho in the prediction included.
@@ -36,6 +41,8 @@ class Deviations:
         O-C of theta (radians), then rho; NaN where not measured.
     covariance : ndarray, shape (2 n, 2 n)
         Of `gap`: the measures' errors and the orbit's, which all of them share.
+    own_variance : ndarray, shape (2 n,)
+        The measures' part of its diagonal.
     refit : callable or None
         chi2, values and probability of some rows by a refit (see `relorbit.derive.surprise`).
     """
@@ -53,7 +60,34 @@ class Deviations:
     probability: FloatArray
     gap: FloatArray
     covariance: FloatArray
+    own_variance: FloatArray
     refit: Refit | None = None
+
+    def with_profiles(self, profile: Profile) -> Deviations:
+        """The same, errors of predictions by profiles of the likelihood instead of first order.
+
+        How far off a value is, is then the root of the rise of chi2 (see
+        `relorbit.derive.surprise`); the error of the prediction is what that leaves when the
+        measure's own is taken off.
+        """
+        count = self.theta.size
+        sigma = np.stack([np.radians(self.theta_sigma), self.rho_sigma])
+        standard = np.stack([self.theta_in_sigma, self.rho_in_sigma])
+        gap = self.gap.reshape(2, count)
+        own = self.own_variance.reshape(2, count)
+        size = np.nan_to_num(np.abs(standard)).max(axis=0)
+        for k in np.argsort(-size, kind="stable")[:MOST_PROFILES]:
+            z = np.array(profile(int(k)))
+            for kind in (0, 1):
+                if not z[kind] > ON_THE_SPOT or not np.isfinite(gap[kind, k]):
+                    continue
+                variance = (gap[kind, k] / z[kind]) ** 2 - own[kind, k]
+                sigma[kind, k] = np.sqrt(max(variance, 0.0))
+                standard[kind, k] = gap[kind, k] / np.sqrt(max(variance, 0.0) + own[kind, k])
+        return replace(
+            self, theta_sigma=np.minimum(np.degrees(sigma[0]), WIDEST_ANGLE), rho_sigma=sigma[1],
+            theta_in_sigma=standard[0], rho_in_sigma=standard[1],
+        )  # fmt: skip
 
     def with_refits(self, refit: Refit) -> Deviations:
         """The same, what looks surprising tested again by refits."""
@@ -114,7 +148,8 @@ def deviations(
     d_theta = np.remainder(theta - predicted_theta + 180.0, 360.0) - 180.0
     gap = np.concatenate([np.radians(d_theta), rho - predicted_rho])
     own = np.concatenate([np.radians(theta_err), rho_err])
-    covariance = orbit + np.diag(np.nan_to_num(own) ** 2)
+    own_variance = np.nan_to_num(own) ** 2
+    covariance = orbit + np.diag(own_variance)
     sigma, total = np.sqrt(np.diag(orbit)), np.sqrt(np.diag(covariance))
     with np.errstate(divide="ignore", invalid="ignore"):
         standard = gap / total
@@ -128,7 +163,7 @@ def deviations(
         predicted_theta, predicted_rho,
         np.minimum(np.degrees(sigma[:count]), WIDEST_ANGLE), sigma[count:],
         d_theta, rho - predicted_rho, standard[:count], standard[count:],
-        chi2, values, probability, gap, covariance,
+        chi2, values, probability, gap, covariance, own_variance,
     )  # fmt: skip
 
 

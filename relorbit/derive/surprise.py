@@ -2,12 +2,13 @@
 
 Errors carried to first order fail where an orbit is weakly known: the orbits that the measures
 allow lie along a bent valley. By how much chi2 rises when new measures join the old ones, every
-basin searched, has no such limit; for small errors it is the same number.
+basin searched, has no such limit; for small errors it is the same number. Its root for one value
+alone tells how far off that value is (the profile of the likelihood).
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -16,13 +17,17 @@ from scipy.stats import chi2 as chi2_distribution
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import FloatArray
-from relorbit.orbit.regular import SIZE, regular_from_elements
+from relorbit.orbit.regular import SIZE, elements_from_regular, regular_from_elements
 from relorbit.solve.basins import LAST_STEPS, find_basins
 from relorbit.solve.observations import observe
 from relorbit.solve.refine import polar_problem, refine
 from relorbit.solve.residuals import residuals
 from relorbit.solve.solution import Solution
 
+WORTH_A_SEARCH = 1.5  # sigma beyond which other basins than the orbit's are tried
+MOST_STARTS = 6
+# rise of chi2 up to which an orbit is as good as the best one of the same measures
+THE_SAME = 0.5
 # rise of chi2 beyond which an orbit is not that of its own measures: chance alone exceeds it in
 # one of two hundred cases with seven unknowns (chi-square distribution)
 NOT_THEIRS = 20.3
@@ -52,24 +57,55 @@ class RefitTest:
         start = regular_from_elements(before.elements, t0)
         self.chi2 = float(refine(polar_problem(o, t0), start, None, LAST_STEPS).chi2[0])
 
-    def is_theirs(self, elements: Elements) -> bool:
+    def is_theirs(self, elements: Elements, most: float = NOT_THEIRS) -> bool:
         """True where an orbit fits the old measures about as well as the best one near it."""
         rise = residuals(elements, self.old).chi2 - self.chi2
-        return self.before.dof > SIZE and rise <= NOT_THEIRS * self.scale
+        return self.before.dof > SIZE and rise <= most * self.scale
 
     def __call__(self, rows: FloatArray) -> tuple[float, int, float]:
         """Rise of chi2 by some of the new measures, their values, and its probability."""
-        self.report()
-        joined = observe(self.old.append(self.new.select(np.asarray(rows, dtype=int))))
-        values = joined.numbers - observe(self.old).numbers
-        t0, orbits = find_basins(joined, on_progress=lambda share: self.report())
-        near = refine(
-            polar_problem(joined, t0), regular_from_elements(self.before.elements, t0), None,
-            LAST_STEPS,
-        )  # fmt: skip
-        chi2 = min(float(orbits.chi2[0]), float(near.chi2[0]))
-        rise = max(chi2 - self.chi2, 0.0) / self.scale
+        new = self.new.select(np.asarray(rows, dtype=int))
+        values = int(new.has_theta.sum() + new.has_rho.sum())
+        rise = min(self._rise(new, [self.before.elements]), self._search(new)[0])
         return rise, values, float(chi2_distribution.sf(rise, values))
+
+    def profile(self, row: int) -> tuple[float, float]:
+        """How far off theta and rho of a new measure are, each by itself, in sigma; NaN missing.
+
+        The root of the rise of chi2: the profile of the likelihood at the value measured.
+        """
+        one = self.new.select([row])
+        gone = np.array([np.nan])
+        alone = {}
+        if one.has_theta[0]:
+            alone[0] = replace(one, rho=gone, rho_err=gone)
+        if one.has_rho[0]:
+            alone[1] = replace(one, theta=gone, theta_err=gone)
+        rises = {kind: self._rise(part, [self.before.elements]) for kind, part in alone.items()}
+        if max(rises.values()) > WORTH_A_SEARCH**2:
+            # a value alone cannot raise chi2 by more than both: their orbits are starts too
+            orbits = self._search(one)[1]
+            for kind, part in alone.items():
+                rises[kind] = min(rises[kind], self._rise(part, orbits), self._search(part)[0])
+        return tuple(float(np.sqrt(rises.get(kind, np.nan))) for kind in (0, 1))
+
+    def _rise(self, new: Measures, orbits: Sequence[Elements]) -> float:
+        """Rise of chi2 by new measures, of the best fit near some orbits."""
+        self.report()
+        joined = observe(self.old.append(new))
+        t0 = joined.mean_epoch
+        starts = np.array([regular_from_elements(one, t0) for one in orbits])
+        return self._above(refine(polar_problem(joined, t0), starts, None, LAST_STEPS).chi2.min())
+
+    def _search(self, new: Measures) -> tuple[float, list[Elements]]:
+        """The same of the best of all orbits, and the best few of these."""
+        joined = observe(self.old.append(new))
+        t0, found = find_basins(joined, on_progress=lambda share: self.report())
+        best = [elements_from_regular(u, t0) for u in found.u[:MOST_STARTS]]
+        return self._above(found.chi2[0]), best
+
+    def _above(self, chi2: float) -> float:
+        return max(float(chi2) - self.chi2, 0.0) / self.scale
 
 
 def _with_weights(before: Solution, old: Measures) -> Measures:

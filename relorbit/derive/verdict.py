@@ -10,7 +10,7 @@ from scipy.stats import chi2 as chi2_distribution
 from relorbit.derive.new_measures import NewMeasures
 from relorbit.derive.prediction import Deviations, deviations
 from relorbit.derive.refitting import squares
-from relorbit.derive.slips import Slip, explain
+from relorbit.measures.slips import Slip, explain
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.regular import Uncertainty

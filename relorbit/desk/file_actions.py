@@ -216,7 +216,8 @@ class FileActions:
     # -- figures and tables out ----------------------------------------------------------------
 
     def figure(self) -> None:
-        fields = (Field("which", "Figure", FIGURES[0], FIGURES),)
+        names = (*FIGURES, *self.desk.sampling.figures())
+        fields = (Field("which", "Figure", names[0], names),)
         chosen = {}
         if not self.desk.fill_in("Save a figure", fields, chosen.update, "Choose a name\u2026"):
             return
@@ -228,13 +229,16 @@ class FileActions:
             self.save_figure_as(chosen["which"], path)
 
     def save_figure_as(self, which: str, path: str) -> None:
-        """Write one of `FIGURES`."""
+        """Write one of `FIGURES`, or a figure of the samples."""
         with self.desk.refusals("Not saved"):
             check_format(path)
             save_figure(self._figure(which), path)
             self.desk.say(f"Saved: {path}")
 
     def _figure(self, which: str) -> Figure:
+        of_samples = self.desk.sampling.figures()
+        if which in of_samples:
+            return of_samples[which]()
         model, year = self.desk.model, self.desk.year
         pair, orbit, elements = model.pair, model.orbit, model.elements
         of = model.consequences.residuals

@@ -12,6 +12,7 @@ from relorbit.derive.mass import mass_budget
 from relorbit.desk.commands import CommandSet
 from relorbit.desk.model import ORBIT, PAIR, DeskModel
 from relorbit.desk.orbits_list import OrbitsList
+from relorbit.desk.slips_page import SlipsPage
 from relorbit.desk.theme import Palette, Sizes
 from relorbit.desk.words import sentence, words_of
 from relorbit.errors import InputError
@@ -23,6 +24,11 @@ from relorbit.show.text import (
 from relorbit.solve.solution import Solution
 
 PATIENCE = 150  # milliseconds without a change before the longer texts are written anew
+NO_SAMPLES = (
+    "Not sampled yet. Sample draws all orbits that fit, in proportion to their probability: what "
+    "they agree on\nis known, however short the arc."
+)
+OUTDATED = "The measures were changed since they were sampled. Sample again."
 NO_ORBIT = "Nothing follows yet: there is no orbit. Press Solve."
 PROVISIONAL = "Orbits from short arcs are provisional."
 SUN = CAUTION.replace("\n", " ").removeprefix(PROVISIONAL).strip()
@@ -48,10 +54,13 @@ class FollowsView(ttk.Frame):
         self.orbits = OrbitsList(self.tabs, model, commands)
         self.mass = TextPage(self.tabs)
         self.ephemeris = EphemerisPage(self.tabs, commands, ephemeris_text, year)
+        self.samples = SamplesPage(self.tabs, commands)
+        self.slips = SlipsPage(self.tabs, model, commands)
         self.notes = TextPage(self.tabs, words=True)
         for page, title in (
-            (self.orbits, "Orbits"), (self.mass, "Mass, turning points"),
-            (self.ephemeris, "Ephemeris"), (self.notes, "Notes"),
+            (self.orbits, "Orbits"), (self.mass, "Mass, dates"),
+            (self.ephemeris, "Ephemeris"), (self.samples, "All that fit"),
+            (self.slips, "Slips"), (self.notes, "Notes"),
         ):  # fmt: skip
             self.tabs.add(page, text=title)
         self.tabs.bind("<<NotebookTabChanged>>", lambda _: self.write())
@@ -68,9 +77,10 @@ class FollowsView(ttk.Frame):
             self._pending = None
 
     def wear(self, palette: Palette) -> None:
-        for page in (self.mass, self.notes, self.ephemeris.page):
+        for page in (self.mass, self.notes, self.ephemeris.page, self.samples.page):
             page.wear(palette)
-        self.orbits.wear(palette)
+        for page in (self.orbits, self.slips):
+            page.wear(palette)
 
     def write(self) -> None:
         """Write the page that is seen."""
@@ -82,8 +92,27 @@ class FollowsView(ttk.Frame):
             self.mass.write(self._mass_text())
         elif seen is self.ephemeris:
             self.ephemeris.write(self.model.elements is not None)
+        elif seen is self.samples:
+            self.samples.page.write(self._samples_text())
+        elif seen is self.slips:
+            self.slips.write()
         else:
             self.notes.write(self._notes_text(), self._notes_table())
+
+    def show_samples(self) -> None:
+        """Turn to the table of the samples."""
+        self.tabs.select(self.samples)
+        self.write()
+
+    def show_slips(self) -> None:
+        """Turn to the list of slips."""
+        self.tabs.select(self.slips)
+        self.write()
+
+    def _samples_text(self) -> str:
+        if self.model.samples_outdated:
+            return OUTDATED
+        return self.model.samples_text or NO_SAMPLES
 
     def _mass_text(self) -> str:
         model = self.model
@@ -154,6 +183,20 @@ class TextPage(ttk.Frame):
             background=palette.paper, foreground=palette.ink, insertbackground=palette.ink,
             selectbackground=palette.accent, selectforeground=palette.on_accent,
         )  # fmt: skip
+
+
+class SamplesPage(ttk.Frame):
+    """The intervals of all orbits that fit."""
+
+    def __init__(self, parent: tk.Misc, commands: CommandSet) -> None:
+        super().__init__(parent)
+        sizes = Sizes(self)
+        feet = ttk.Frame(self)
+        feet.pack(side="bottom", fill="x", padx=sizes(6), pady=sizes(4))
+        for name in ("save_samples", "sample"):
+            commands.button(feet, name).pack(side="right", padx=(sizes(4), 0))
+        self.page = TextPage(self)
+        self.page.pack(fill="both", expand=True)
 
 
 class EphemerisPage(ttk.Frame):

@@ -14,7 +14,8 @@ from relorbit.desk.theme import Palette, Sizes
 BEGIN = """Open a pair and press Solve: every orbit that fits is found, without a starting guess.
 Point at a measure to read it, click to select it everywhere. W goes to the one that is farthest
 off; F turns its quadrant, X sets it aside with a reason, U uses it again: nothing observed is lost.
-Refine from here fits again without a search. Keep puts the orbit on record with the pair."""
+Refine from here fits again without a search. Keep puts the orbit on record with the pair. Where the
+arc is short, Sample draws all orbits that fit: what they agree on is known."""
 MOUSE = (
     ("wheel", "zoom; with Shift: residuals"),
     ("drag", "select; with Shift: add"),

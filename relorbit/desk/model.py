@@ -13,14 +13,13 @@ from typing import Any
 
 from relorbit.derive.consequences import Consequences, consequences
 from relorbit.derive.ephemeris import AnyOrbit
+from relorbit.desk.results import Results
+from relorbit.desk.topics import FILE, ORBIT, PAIR, SELECTION, VIEW
 from relorbit.errors import InputError
 from relorbit.measures import editing
 from relorbit.measures.pair import Pair, RecordedOrbit, new_pair
 from relorbit.orbit.elements import NAMES, Elements
 from relorbit.solve.solution import Solution
-
-# kinds of change that views are told of
-PAIR, ORBIT, SELECTION, VIEW, FILE = "pair", "orbit", "selection", "view", "file"
 
 
 @dataclass(frozen=True)
@@ -58,7 +57,7 @@ class Step:
     state: State
 
 
-class DeskModel:
+class DeskModel(Results):
     """One pair on the desk.
 
     Attributes
@@ -72,12 +71,15 @@ class DeskModel:
         Julian year of the time slider.
     by_phase : bool
         The strips run along the phase of the orbit instead of time.
+    sheaf : bool
+        Whether sampled orbits, where there are any, are drawn on the sky.
     """
 
     def __init__(self, pair: Pair | None = None, path: Path | None = None) -> None:
         self._listeners: list[Callable[[frozenset[str]], None]] = []
         self.orientation = "sky"
         self.by_phase = False
+        self.sheaf = True
         self.epoch = 2000.0
         self.open(pair or new_pair("new pair"), path)
 
@@ -146,6 +148,7 @@ class DeskModel:
         self._history = [Step("", State(pair, elements))]
         self._place = 0
         self._saved_pair = pair
+        self.forget_results()
         self._consequences: tuple[State, Consequences] | None = None
         self._tell(PAIR, ORBIT, SELECTION, VIEW, FILE)
 
@@ -319,9 +322,9 @@ class DeskModel:
     # -- the view ------------------------------------------------------------------------------
 
     def look(self, **changes: Any) -> None:
-        """Change `orientation`, `epoch` or `by_phase`; not part of the history."""
+        """Change `orientation`, `epoch`, `by_phase` or `sheaf`; not part of the history."""
         for name, value in changes.items():
-            if name not in ("orientation", "epoch", "by_phase"):
+            if name not in ("orientation", "epoch", "by_phase", "sheaf"):
                 raise TypeError(f"the view has no {name!r}")
             setattr(self, name, value)
         self._tell(VIEW)
@@ -329,3 +332,4 @@ class DeskModel:
     def _tell(self, *kinds: str) -> None:
         for listener in list(self._listeners):
             listener(frozenset(kinds))
+

@@ -50,7 +50,14 @@ class PlotView(ttk.Frame):
 
     A heir fills `axes`, builds artists in `build`, feeds the moving ones in `feed`, and tells in
     `spots` where the measures stand.
+
+    Attributes
+    ----------
+    later : int
+        Milliseconds before it is drawn anew: not all figures in one turn of the event loop.
     """
+
+    later = 0
 
     def __init__(
         self, parent: tk.Misc, model: DeskModel, palette: Palette, on_menu: Callable[..., None]
@@ -111,7 +118,10 @@ class PlotView(ttk.Frame):
         """Draw all of it, soon and once however often this is asked."""
         self._rebuild = self._rebuild or rebuild
         if self._pending is None:
-            self._pending = self.after_idle(self._draw_now)
+            self._pending = self.after(self.later, self._draw_soon)
+
+    def _draw_soon(self) -> None:
+        self._pending = self.after_idle(self._draw_now)
 
     def _draw_now(self) -> None:
         self._pending = None

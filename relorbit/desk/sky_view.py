@@ -34,10 +34,13 @@ from relorbit.show.orbit_plot import (
     orbit_view,
 )
 from relorbit.show.overlays import CURVE_POINTS, draw_other_orbit
+from relorbit.show.sampled_plots import draw_sheaf, smaller_orbits
 from relorbit.show.view import View, draw_corners, frame_axes, place, sky, view_of
+from relorbit.solve.posterior import Posterior
 
 PAUSE = 150  # milliseconds
 RING = np.linspace(0.0, TWO_PI, CURVE_POINTS)
+SHEAF = 60  # sampled orbits drawn
 INSETS = (46.0, 8.0, 32.0, 8.0)  # left, right, bottom, top: pixels at 96 dots an inch
 
 
@@ -57,6 +60,7 @@ class SkyView(PlotView):
         self._decor: list[Artist] = []
         self._decor_of: Elements | None = None
         self._corners: list[Artist] = []
+        self._sheaf: Posterior | None = None
         self._scale = 1.0  # arcsec a pixel
         super().__init__(parent, model, palette, on_menu)
         self.axes: Axes = self.figure.add_axes((0.1, 0.1, 0.8, 0.8))
@@ -78,8 +82,11 @@ class SkyView(PlotView):
         quiet(axes)
         self._put_axes()
         others = self._others()
+        self._sheaf = model.samples if model.sheaf else None
         self._frame(marks, others, kept)
         draw_primary(axes)
+        if self._sheaf is not None:
+            draw_sheaf(axes, self._sheaf, self._sheaf.equal_rows(SHEAF), self.palette.curve)
         for slot, (label, elements) in enumerate(others.items()):
             draw_other_orbit(axes, elements, label, slot)
         draw_groups(axes, marks, *sky(marks.theta, marks.rho), self.palette)
@@ -111,6 +118,9 @@ class SkyView(PlotView):
             x, y = sky(marks.theta, marks.rho)
             places = np.stack([x, y], axis=-1)[np.isfinite(x) & np.isfinite(y)]
             needed = np.concatenate([places, [(0.0, 0.0)]])
+            if self._sheaf is not None:
+                rows = self._sheaf.equal_rows(SHEAF)
+                needed = np.concatenate([needed, smaller_orbits(self._sheaf, rows)])
             if len(needed) == 1:
                 needed = np.array([(-1.0, -1.0), (1.0, 1.0)])
             view = view_of(needed, np.empty((0, 2)), self.model.orientation)
@@ -237,8 +247,10 @@ class SkyView(PlotView):
         super().on_change(kinds)
 
     def outdated(self, kinds: frozenset[str]) -> bool:
-        turned = VIEW in kinds and self._orientation != self.model.orientation
-        return turned or (ORBIT in kinds and self.framed and not self.model.nudging)
+        model = self.model
+        turned = VIEW in kinds and self._orientation != model.orientation
+        sampled = self._sheaf is not (model.samples if model.sheaf else None)
+        return turned or sampled or (ORBIT in kinds and self.framed and not self.model.nudging)
 
     def set_limits(
         self, axes: Axes, x: tuple[float, float], y: tuple[float, float], keys: int

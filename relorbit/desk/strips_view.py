@@ -33,6 +33,8 @@ SLACK = (0.45, 1.25)  # the scale follows when what it must hold is smaller or l
 class StripsView(PlotView):
     """Two panels of O-C with one axis of time or phase."""
 
+    later = 12
+
     def __init__(
         self, parent: tk.Misc, model: DeskModel, palette: Palette, on_menu: Callable[..., None]
     ) -> None:

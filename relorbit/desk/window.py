@@ -22,12 +22,15 @@ from relorbit.desk.measure_actions import MeasureActions
 from relorbit.desk.model import FILE, ORBIT, PAIR, SELECTION, VIEW, DeskModel
 from relorbit.desk.orbit_actions import OrbitActions
 from relorbit.desk.parts import Bench, Panes, Status, on_screen
+from relorbit.desk.sample_actions import SampleActions
 from relorbit.desk.session import EXAMPLES, Session
-from relorbit.desk.settings import LARGEST_SCALE, SMALLEST_SCALE, Settings
+from relorbit.desk.settings import Settings
 from relorbit.desk.sky_view import SkyView
+from relorbit.desk.slip_actions import SlipActions
 from relorbit.desk.strips_view import StripsView
 from relorbit.desk.table_view import TableView
 from relorbit.desk.theme import PALETTES, Sizes, dress, set_fonts, set_scaling
+from relorbit.desk.view_actions import ViewActions
 from relorbit.desk.welcome import Welcome
 from relorbit.desk.words import words_of
 from relorbit.desk.worker import Outcome, Worker
@@ -36,7 +39,6 @@ from relorbit.orbit.elements import Elements
 
 POLL, TICK, WATCH = 40, 2000, 1000  # milliseconds
 PATIENCE = 5.0  # seconds that the end of a job is waited for when the window closes
-LARGER = 1.1
 
 
 class Desk:
@@ -81,6 +83,8 @@ class Desk:
         self.files = FileActions(self)
         self.measures = MeasureActions(self)
         self.orbits = OrbitActions(self)
+        self.sampling = SampleActions(self)
+        self.slips = SlipActions(self)
         model = self.model
         self.commands = CommandSet(self.root, (
             *self.files.commands(),
@@ -90,30 +94,12 @@ class Desk:
             Command("redo", "Redo", "Edit", "Control-y", self.redo,
                     lambda: model.redo_label is not None, "Redo"),
             *self.measures.commands(),
+            *self.slips.commands(),
             *self.orbits.commands(),
-            *self._view_commands(),
+            *self.sampling.commands(),
+            *ViewActions(self).commands(),
             Command("help", "Keys and how to begin", "Help", "F1", self.help),
         ))  # fmt: skip
-
-    def _view_commands(self) -> tuple[Command, ...]:
-        return (
-            Command("orientation", "Turn: as on the sky, as in the eyepiece", "View", "o",
-                    self.turn, self.on_desk),
-            Command("phase", "Strips: by time, by phase", "View", "p", self.by_phase,
-                    self.has_orbit),
-            Command("reset", "Show all again", "View", "0", self.reset, self.on_desk),
-            Command("zoom_in", "Zoom in", "View", "plus", lambda: self.zoom(1 / 1.25),
-                    self.on_desk),
-            Command("zoom_out", "Zoom out", "View", "minus", lambda: self.zoom(1.25),
-                    self.on_desk),
-            Command("others", "Orbits on record: show, hide", "View", "r", self.toggle_others,
-                    lambda: bool(self.model.pair.orbits)),
-            Command("dark", "Dark or light", "View", "Control-d", self.toggle_dark),
-            Command("larger", "Larger text", "View", "Control-plus",
-                    lambda: self.rescale(LARGER)),
-            Command("smaller", "Smaller text", "View", "Control-minus",
-                    lambda: self.rescale(1 / LARGER)),
-        )  # fmt: skip
 
     # -- parts ---------------------------------------------------------------------------------
 
@@ -239,33 +225,11 @@ class Desk:
 
     # -- the view ------------------------------------------------------------------------------
 
-    def turn(self) -> None:
-        self.model.look(orientation="sky" if self.model.orientation == "eyepiece" else "eyepiece")
-
-    def by_phase(self) -> None:
-        self.model.look(by_phase=not self.model.by_phase)
-
-    def reset(self) -> None:
-        self.sky.reset()
-        self.strips.reset()
-
-    def zoom(self, factor: float) -> None:
-        self.sky.zoom(self.sky.axes, factor)
-
-    def toggle_others(self) -> None:
-        self.show_others = not self.show_others
-        self.sky.redraw()
-
     def toggle_dark(self) -> None:
         self.settings.dark = not self.settings.dark
         self.palette = PALETTES["dark" if self.settings.dark else "light"]
         dress(self.root, self.palette)
         self._wear()
-
-    def rescale(self, factor: float) -> None:
-        scale = (self.settings.scale or 1.0) * factor
-        self.settings.scale = min(max(scale, SMALLEST_SCALE), LARGEST_SCALE)
-        self.say(f"Sizes change to {self.settings.scale:.0%} when the window is opened next.")
 
     def help(self) -> None:
         show_help(self.root, self.palette, self.commands.all)

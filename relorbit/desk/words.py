@@ -5,6 +5,7 @@ from __future__ import annotations
 from relorbit.desk.model import DeskModel
 from relorbit.errors import InputError, RelorbitError
 from relorbit.measures.pair import Pair
+from relorbit.measures.vetting import is_corrected
 from relorbit.show.numbers import angle, fixed, known
 
 LETTERS = {"node": "\u03a9", "omega": "\u03c9"}
@@ -43,9 +44,10 @@ def in_sigma(value: float) -> str:
 
 
 def state_of(pair: Pair, row: int) -> str:
-    """What was done to a measure: "set aside", "flipped", both or nothing."""
+    """What was done to a measure: "set aside", "flipped", "corrected", several or nothing."""
     m = pair.measures
     words = ["set aside"] * (not m.use[row]) + ["flipped"] * bool(m.flip[row])
+    words += ["corrected"] * is_corrected(m, row)
     return ", ".join(words)
 
 

@@ -114,6 +114,42 @@ def julian_years(
     return years
 
 
+def other_dates(epoch: NDArray[np.float64], texts: Sequence[str]) -> NDArray[np.float64]:
+    """Julian years with day and month exchanged; NaN where a date shows none or no other.
+
+    Parameters
+    ----------
+    epoch : array, shape (n,)
+        Julian years that the dates were read as; a text that says another epoch counts for none.
+    texts : sequence of str, length n
+        Dates as received, such as ``2001-03-12`` or ``12.03.2001``.
+    """
+    years = np.full(len(texts), np.nan)
+    rows, dates = [], []
+    for row, text in enumerate(texts):
+        word = str(text).strip()
+        for form in (*_FORMS, _EITHER_ORDER):
+            match = form.fullmatch(word) if word else None
+            parts = match.groupdict() if match else {}
+            if not parts or parts.get("word"):
+                continue
+            month, day = parts.get("month", parts.get("one")), parts.get("day", parts.get("two"))
+            whole, dot, rest = day.partition(".")
+            if int(whole) <= 12 and int(month) <= 12 and int(whole) != int(month):
+                rows.append(row)
+                dates.append([
+                    _calendar({**parts, "month": str(int(m)), "day": f"{int(d)}{dot}{rest}"})
+                    for m, d in ((month, whole), (whole, month))
+                ])  # fmt: skip
+            break
+    if rows:
+        one, other = (_converted("calendar", [pair[k] for pair in dates]) for k in (0, 1))
+        first, second = np.abs(one - epoch[rows]), np.abs(other - epoch[rows])
+        there = np.where(first < second, other, one)
+        years[rows] = np.where(np.minimum(first, second) < 1e-5, there, np.nan)
+    return years
+
+
 def date_pattern(pattern: str) -> re.Pattern[str]:
     """A compiled pattern from one such as ``DD.MM.YYYY`` or ``Mon DD YYYY hh:mm``.
 

@@ -47,7 +47,7 @@ _EPOCH_UNITS = dict.fromkeys(("jd", "mjd", "julian", "besselian", "yr", "ut"), (
 UNITS = {
     "epoch": _EPOCH_UNITS,
     "theta": _DEGREES, "theta_err": _DEGREES, "theta_obs": _DEGREES,
-    "rho": _ARCSECONDS, "rho_err": _ARCSECONDS,
+    "rho": _ARCSECONDS, "rho_err": _ARCSECONDS, "rho_obs": _ARCSECONDS,
     "aperture_m": {"m": (1.0, 1.0), "cm": (1.0, 100.0), "mm": (1.0, 1000.0), "in": (2.54, 100.0)},
 }  # fmt: skip
 
@@ -83,6 +83,8 @@ _WORDS: dict[str, str] = {
     "reason": "reason",
     "thetaobs": "theta_obs",
     "epochobs": "epoch_obs",
+    "rhoobs": "rho_obs",
+    "vetted": "vetted",
     "month": "month",
     "day": "day",
 }

@@ -14,6 +14,7 @@ from relorbit.measures.layout import Layout, read_layout
 from relorbit.measures.pair import Pair
 from relorbit.measures.reader import ListReader
 from relorbit.measures.table import Measures
+from relorbit.measures.vetting import epochs_before
 
 SAME_EPOCH_YR = 0.0005
 IN_PAIR_FILE = "in pair file"
@@ -143,6 +144,7 @@ def _doubled(
 def _keys(measures: Measures) -> list[tuple[tuple, float]]:
     received = np.where(np.isnan(measures.theta_obs), measures.theta, measures.theta_obs)
     theta = np.where(np.isnan(received), -1.0, np.round(received, 4)).tolist()
-    rho = np.where(measures.has_rho, np.round(measures.rho, 5), -1.0).tolist()
+    received = np.where(np.isnan(measures.rho_obs), measures.rho, measures.rho_obs)
+    rho = np.where(np.isnan(received), -1.0, np.round(received, 5)).tolist()
     keys = zip(theta, rho, measures.observer.tolist(), strict=True)
-    return list(zip(keys, measures.epoch.tolist(), strict=True))
+    return list(zip(keys, epochs_before(measures).tolist(), strict=True))

@@ -18,9 +18,11 @@ from relorbit.orbit.elements import Elements
 
 _UNITS = {
     "theta": "deg", "rho": "arcsec", "theta_err": "deg", "rho_err": "arcsec", "theta_obs": "deg",
-    "aperture_m": "m", "ra_deg": "deg", "dec_deg": "deg", "pm_ra_mas_yr": "mas/yr",
-    "pm_dec_mas_yr": "mas/yr", "parallax_mas": "mas", "parallax_err_mas": "mas",
-    "magnitude_primary": "mag", "magnitude_secondary": "mag",
+    "rho_obs": "arcsec", "aperture_m": "m", "ra_deg": "deg", "dec_deg": "deg",
+    "pm_ra_mas_yr": "mas/yr", "pm_dec_mas_yr": "mas/yr", "parallax_mas": "mas",
+    "parallax_err_mas": "mas", "magnitude_primary": "mag", "magnitude_secondary": "mag",
+    "ra_err_mas": "mas", "dec_err_mas": "mas", "pm_ra_err_mas_yr": "mas/yr",
+    "pm_dec_err_mas_yr": "mas/yr",
 }  # fmt: skip
 _ALIASES = {
     "ra": "ra_deg", "dec": "dec_deg", "parallax": "parallax_mas",
@@ -240,7 +242,7 @@ class Pair:
             if name in target and name != "name":
                 raise TypeError(f"from_arrays got {name} twice, once as {keyword}")
             target[name] = value
-        columns = {name: _in_our_unit(name, value) for name, value in columns.items()}
+        columns = {name: in_our_unit(name, value) for name, value in columns.items()}
         count = np.size(columns["epoch"])
         for name in set(columns) - {"epoch", "theta", "rho", "theta_err", "rho_err"}:
             if columns[name] is not None and np.ndim(columns[name]) == 0:
@@ -357,7 +359,7 @@ def _identity_number(name: str, value: Any) -> float | None:
     if isinstance(value, str) and name in ("ra_deg", "dec_deg"):
         return right_ascension(value) if name == "ra_deg" else declination(value)
     try:
-        number = float(_in_our_unit(name, value))
+        number = float(in_our_unit(name, value))
     except (TypeError, ValueError) as error:
         if isinstance(error, InputError):
             raise
@@ -367,7 +369,7 @@ def _identity_number(name: str, value: Any) -> float | None:
     return number
 
 
-def _in_our_unit(name: str, value: Any) -> Any:
+def in_our_unit(name: str, value: Any) -> Any:
     """Plain values in this project's units from an astropy Time, Quantity, Column or array."""
     if name == "epoch" and hasattr(value, "jyear") and hasattr(value, "tt"):
         return np.asarray(value.tt.jyear)

@@ -73,7 +73,7 @@ def reduce_to_j2000(
             for when, word in zip(epoch, equinox, strict=True)
         ])  # fmt: skip
         motion = (pm_ra_mas_yr or 0.0, pm_dec_mas_yr or 0.0)
-        place, turn = _place_and_meridian_turn(epoch, ra_deg, dec_deg, *motion)
+        place, turn = place_and_meridian_turn(epoch, ra_deg, dec_deg, *motion)
         turn = np.where(of_date, turn, 0.0) + pole_angle(place, years)
         fresh = turned & np.isnan(theta_obs)
         theta_obs[fresh] = theta[fresh]
@@ -99,6 +99,18 @@ def reduce_pair(pair: Pair) -> tuple[Pair, int]:
     return pair.with_measures(measures), int(np.count_nonzero(changed))
 
 
+def precession_of_date(pair: Pair, epoch: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Degrees that a reduction to J2000 adds to position angles of date, shape (n,).
+
+    The pair must have a position; `epoch` is in Julian years, shape (n,).
+    """
+    one = Measures.from_columns(
+        {"epoch": epoch, "theta": np.full(len(epoch), 180.0), "equinox": ["date"] * len(epoch)},
+        allow_any_epoch=True,
+    )
+    return reduce_pair(pair.with_measures(one))[0].measures.theta - 180.0
+
+
 def pole_angle(place: NDArray[np.float64], years: NDArray[np.float64]) -> NDArray[np.float64]:
     """Position angle of the mean pole of a year, seen from a star, from the north of J2000.
 
@@ -120,11 +132,11 @@ def pole_angle(place: NDArray[np.float64], years: NDArray[np.float64]) -> NDArra
 
     _, precession, _ = erfa.bp06(2451545.0, (years - J2000) * 365.25)
     pole = precession[:, 2, :]
-    north, east = _north_and_east(place)
+    north, east = north_and_east(place)
     return np.arctan2(np.sum(pole * east, axis=1), np.sum(pole * north, axis=1))
 
 
-def _place_and_meridian_turn(
+def place_and_meridian_turn(
     epoch: NDArray[np.float64],
     ra_deg: float,
     dec_deg: float,
@@ -138,7 +150,7 @@ def _place_and_meridian_turn(
     """
     alpha, delta = np.deg2rad(ra_deg), np.deg2rad(dec_deg)
     now = np.array([[np.cos(delta) * np.cos(alpha), np.cos(delta) * np.sin(alpha), np.sin(delta)]])
-    north, east = _north_and_east(now)
+    north, east = north_and_east(now)
     velocity = MAS * (pm_ra_mas_yr * east + pm_dec_mas_yr * north)
     then = now + velocity * (epoch - J2000)[:, np.newaxis]
     then = then / np.linalg.norm(then, axis=1, keepdims=True)
@@ -146,7 +158,7 @@ def _place_and_meridian_turn(
         return then, np.zeros(len(epoch))
     # The circle's direction is the same at both ends: its pole crossed with each place.
     circle = np.cross(now, velocity)
-    north_then, east_then = _north_and_east(then)
+    north_then, east_then = north_and_east(then)
     along_then, along_now = np.cross(circle, then), np.cross(circle, now)
     bearing_then = np.arctan2(
         np.sum(along_then * east_then, axis=1), np.sum(along_then * north_then, axis=1)
@@ -156,7 +168,7 @@ def _place_and_meridian_turn(
     return then, np.arctan2(np.sin(turn), np.cos(turn))
 
 
-def _north_and_east(
+def north_and_east(
     place: NDArray[np.float64],
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Unit vectors (n, 3) to the north and the east of J2000 at unit vectors (n, 3)."""

@@ -39,6 +39,8 @@ _DESCRIPTIONS = {
     "equinox": (None, "what theta is counted from: J2000, date, or a year"),
     "theta_obs": ("deg", "position angle as received"),
     "epoch_obs": (None, "epoch as received"),
+    "rho_obs": ("arcsec", "separation as received"),
+    "vetted": (None, "what relorbit vet changed, for --undo"),
 }
 _ALWAYS = (
     "epoch", "theta", "rho", "theta_err", "rho_err", "technique", "observer", "use", "equinox",

@@ -19,11 +19,12 @@ LATEST_EPOCH = 2200.0
 
 NUMBERS = (
     "epoch", "theta", "rho", "theta_err", "rho_err", "weight", "aperture_m", "nights", "theta_obs",
+    "rho_obs",
 )  # fmt: skip
 FLAGS = {"use": True, "flip": False}
 TEXTS = {
     "technique": "unknown", "observer": "", "reason": "", "note": "", "equinox": "J2000",
-    "epoch_obs": "",
+    "epoch_obs": "", "vetted": "",
 }  # fmt: skip
 
 EQUINOX = re.compile(r"date|[BJ]?[0-9]{4}(\.[0-9]*)?")
@@ -70,6 +71,10 @@ class Measures:
         Position angle as received, where theta was changed; else NaN.
     epoch_obs : array of str, shape (n,)
         Epoch as received, where it was converted; else empty.
+    rho_obs : array, shape (n,)
+        Separation as received, where rho was changed; else NaN.
+    vetted : array of str, shape (n,)
+        What vetting changed, kept to be undone; see `relorbit.measures.vetting`.
     """
 
     epoch: NDArray[np.float64]
@@ -89,6 +94,8 @@ class Measures:
     equinox: NDArray[np.str_]
     theta_obs: NDArray[np.float64]
     epoch_obs: NDArray[np.str_]
+    rho_obs: NDArray[np.float64]
+    vetted: NDArray[np.str_]
 
     def __post_init__(self) -> None:
         size = np.shape(self.epoch)
@@ -325,7 +332,8 @@ def _check(c: Mapping[str, NDArray], place: _Place, allow_any_epoch: bool) -> No
     for name in ("theta", "theta_obs"):
         rule((c[name] < 0) | (c[name] >= 360), name, partial("{} is outside [0, 360); give the "
              "position angle in degrees, from 0 up to but not including 360".format))  # fmt: skip
-    rule(c["rho"] < 0, "rho", lambda v: f"{v} is negative; a separation is 0 or more")
+    for name in ("rho", "rho_obs"):
+        rule(c[name] < 0, name, lambda v: f"{v} is negative; a separation is 0 or more")
     rule(c["weight"] < 0, "weight", lambda v: f"{v} is negative; a weight is 0 or more")
     for name in ("theta_err", "rho_err"):
         rule(c[name] <= 0, name, lambda v: f"{v} is not a standard deviation; give one above 0 "

@@ -20,6 +20,8 @@ SERIES_BELOW = 0.3  # 1 - e cos E under which E - sin E is summed as a series
 # one e has a table of M over E, fine enough for its interpolated E to need one Halley step only
 TABLE_E = np.linspace(0.0, np.pi, 1025)
 TABLE_SINE = np.sin(TABLE_E)
+E_RANGE = "the eccentricity must lie in 0 <= e < 1"
+M_FINITE = "the mean anomaly must be finite"
 # the constants of Markley's alpha, eq. 20
 ALPHA_FIXED = 3.0 * np.pi**2 / (np.pi**2 - 6.0)
 ALPHA_SLOPE = 1.6 * np.pi / (np.pi**2 - 6.0)
@@ -50,37 +52,69 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
     -----
     Starting value: the cubic of Markley F. L., 1995, Celestial Mechanics 63, 101, eqs. 5 and
     15-20, improved once, both in single precision; or, for few M at one e, interpolation in a
-    table. Then one Halley step in double precision on
-    (1 - e) E + e (E - sin E) - M, a form that does not cancel near periastron. Small E at
-    e > 0.5 take a path of their own, where E - sin E is a series. The number of operations is
-    fixed, and every one runs over a whole block.
+    table. Then one Halley step in double precision. Where 1 - e cos E is small, near periastron
+    at e > 0.7, a path of its own sums E - sin E as a series, without cancellation. The number of
+    operations is fixed, and every one runs over a whole block.
     """
     mean, ecc = np.asarray(mean_anomaly, dtype=np.float64), np.asarray(e, dtype=np.float64)
-    one = ecc.item() if ecc.ndim == 0 else None
-    if one is None:
-        mean, ecc = np.broadcast_arrays(mean, ecc)
+    if ecc.ndim == 0 and mean.ndim > 0 and 0 < mean.size <= BLOCK:
+        return _at_one_e(mean, ecc.item())
+    mean, ecc = np.broadcast_arrays(mean, ecc)
     shape = mean.shape
     mean, ecc = mean.reshape(-1), ecc.reshape(-1)
     if not (ecc.size == 0 or (ecc.min() >= 0.0 and ecc.max() < 1.0)):
-        raise ValueError("the eccentricity must lie in 0 <= e < 1")
+        raise ValueError(E_RANGE)
     size = min(BLOCK, mean.size)
     result, small = np.empty(mean.size), np.empty(mean.size, dtype=bool)
     double, single = np.empty((5, size)), np.empty((10, size), dtype=np.float32)
-    table = None if one is None or mean.size > BLOCK else TABLE_E - one * TABLE_SINE
     for start in range(0, mean.size, BLOCK):
         part = slice(start, start + BLOCK)
         width = min(BLOCK, mean.size - start)
         rooms = double[:, :width], single[:, :width]
-        e_part = ecc[part] if one is None else one
-        _solve_block(mean[part], e_part, result[part], small[part], *rooms, table)
+        _solve_block(mean[part], ecc[part], result[part], small[part], *rooms)
     if small.any():
         which = np.flatnonzero(small)
         full = mean[which]
         reduced = _reduced(full)
-        e_part = ecc[which] if one is None else one
-        inner = np.copysign(_near_periastron(np.abs(reduced), e_part), reduced)
+        inner = np.copysign(_near_periastron(np.abs(reduced), ecc[which]), reduced)
         result[which] = inner + (full - reduced)
     return result.reshape(shape)
+
+
+def _at_one_e(mean: FloatArray, e: float) -> FloatArray:
+    """E at one e, from a table of M over E and one Halley step."""
+    if not 0.0 <= e < 1.0:
+        raise ValueError(E_RANGE)
+    m = np.abs(mean)
+    largest = m.max()
+    if not np.isfinite(largest):
+        raise ValueError(M_FINITE)
+    reduced = mean
+    if largest > np.pi:
+        reduced = _reduced(mean)
+        m = np.abs(reduced)
+    anomaly = np.interp(m, TABLE_E - e * TABLE_SINE, TABLE_E)
+    sine, slope = np.sin(anomaly), np.cos(anomaly)
+    slope *= -e
+    slope += 1.0
+    sine *= e
+    # where the slope is small, E - e sin E cancels, and `_near_periastron` takes over
+    step = anomaly - sine
+    step -= m
+    step /= slope
+    sine /= slope
+    sine *= step
+    sine *= -0.5
+    sine += 1.0
+    step /= sine
+    anomaly -= step
+    if slope.min() < SERIES_BELOW:
+        which = slope < SERIES_BELOW
+        anomaly[which] = _near_periastron(m[which], e)
+    np.copysign(anomaly, reduced, out=anomaly)
+    if reduced is not mean:
+        anomaly += mean - reduced
+    return anomaly
 
 
 def _reduced(mean: FloatArray) -> FloatArray:
@@ -97,12 +131,11 @@ def _reduced(mean: FloatArray) -> FloatArray:
 
 def _solve_block(
     mean: FloatArray,
-    e: FloatArray | float,
+    e: FloatArray,
     anomaly: FloatArray,
     small: NDArray[np.bool_],
     double: FloatArray,
     single: NDArray[np.float32],
-    table: FloatArray | None,
 ) -> None:
     """Fill `anomaly`, and mark in `small` what `_near_periastron` has to do instead.
 
@@ -112,14 +145,11 @@ def _solve_block(
     np.abs(mean, out=m)
     largest = m.max()
     if not np.isfinite(largest):
-        raise ValueError("the mean anomaly must be finite")
+        raise ValueError(M_FINITE)
     reduced = mean if largest <= np.pi else _reduced(mean)
     np.abs(reduced, out=m)
     np.subtract(1.0, e, out=gap)
-    if table is None:
-        anomaly[...] = _starter(m, e, gap, single)
-    else:
-        anomaly[...] = np.interp(m, table, TABLE_E)
+    anomaly[...] = _starter(m, e, gap, single)
     # tan(E/2) gives both sin E and the slope 1 - e cos E = (1 - e) + 2 e sin^2(E/2)
     np.multiply(anomaly, 0.5, out=sine)
     np.tan(sine, out=sine)
@@ -151,7 +181,7 @@ def _solve_block(
 
 
 def _starter(
-    mean: FloatArray, ecc: FloatArray | float, one_minus_e: FloatArray, single: NDArray[np.float32]
+    mean: FloatArray, ecc: FloatArray, one_minus_e: FloatArray, single: NDArray[np.float32]
 ) -> NDArray[np.float32]:
     """E to about 1e-6 in single precision; the result stands in a row of `single`.
 

@@ -77,70 +77,17 @@ def elements_from_regular(u: ArrayLike, reference_epoch: float) -> Elements:
     return Elements(P, T, e, a, i, node, omega).near(reference_epoch)
 
 
-def unit_orbit(
-    longitude: FloatArray, k: ArrayLike, h: ArrayLike, derivatives: bool = True
-) -> tuple[NDArray[np.complex128], ...]:
-    """Place w on the unit orbit and its derivatives by lambda, k and h.
-
-    Parameters
-    ----------
-    longitude : ndarray
-        Mean longitude lambda, radians.
-    k, h : array_like
-        e cos varpi and e sin varpi, broadcast against `longitude`; e < 1.
-    derivatives : bool
-        False returns w alone, in a tuple of one.
-
-    Returns
-    -------
-    w, dw/dlambda, dw/dk, dw/dh : complex ndarrays
-
-    Notes
-    -----
-    With U = exp(i (E + varpi)), g = k + i h, eta = sqrt(1 - e^2) and b = 1/(1 + eta):
-    w = (1 + eta)/2 U + b/2 g^2 conj(U) - g, which follows from X = cos E - e, Y = eta sin E
-    since (1 - eta)/e^2 = b. Nothing divides by e.
-    """
-    g = np.asarray(k) + 1j * np.asarray(h)
-    e = np.abs(g)
-    varpi = np.angle(g)
-    # a single e is solved for faster than an array of one
-    E = eccentric_anomaly(longitude - varpi, e.item() if e.size == 1 else e)
-    angle = E + varpi
-    U = np.empty(angle.shape, dtype=complex)
-    np.cos(angle, out=U.real)
-    np.sin(angle, out=U.imag)
-    eta = np.sqrt((1.0 - e) * (1.0 + e))
-    b = 1.0 / (1.0 + eta)
-    turn = (b * g) * np.conj(U)
-    first, second = (0.5 * (1.0 + eta)) * U, (0.5 * g) * turn
-    w = first + second
-    w -= g
-    if not derivatives:
-        return (w,)
-    # 1 - e cos E; it only scales derivatives, so that cancellation near e = 1 does not matter
-    slope = 1.0 - (np.conj(g) * U).real
-    by_longitude = first - second
-    by_longitude *= 1j / slope
-    # d eta = -(k dk + h dh)/eta and d b = b^2 (k dk + h dh)/eta
-    shape = (b * g) * turn
-    shape -= U
-    shape *= 0.5 / eta
-    turn -= 1.0
-    by_k = shape * g.real
-    by_k += turn
-    by_k += U.imag * by_longitude
-    shape *= g.imag
-    turn *= 1j
-    shape += turn
-    shape -= U.real * by_longitude
-    return w, by_longitude, by_k, shape
+# The functions of time that a position and its derivatives are made of: 1, c and s, the cosine
+# and sine of the eccentric longitude F; cs/q, ss/q and cc/q with q = 1 - e cos E; and c/q and s/q
+# times the mean longitude.
+ONE, COS, SIN, COS_SIN, SIN_SIN, COS_COS, LONG_COS, LONG_SIN = range(8)
+PLACE = SIZE  # the row of z below those of its derivatives
 
 
-def position_and_jacobian(
+def jacobian_and_place(
     u: FloatArray, reference_epoch: float, epochs: FloatArray
-) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
-    """z = x + i y and its derivatives by the regular coordinates.
+) -> NDArray[np.complex128]:
+    """Derivatives of z = x + i y by the regular coordinates, and z itself.
 
     Parameters
     ----------
@@ -153,43 +100,119 @@ def position_and_jacobian(
 
     Returns
     -------
-    z : complex ndarray, shape (..., n), arcsec
-    jacobian : complex ndarray, shape (..., 7, n)
+    complex ndarray, shape (..., 8, n)
+        arcsec; z is the last row.
+
+    Notes
+    -----
+    With F = E + varpi, c = cos F, s = sin F, g = k + i h, eta = sqrt(1 - e^2) and
+    b = 1/(1 + eta): w = w0 + wc c + ws s, where w0 = -g, wc = (1 + eta)/2 + b g^2/2 and
+    ws = i ((1 + eta)/2 - b g^2/2). This follows from X = cos E - e, Y = eta sin E, since
+    (1 - eta)/e^2 = b; nothing divides by e. From F - k s + h c = lambda come dF/dlambda = 1/q,
+    dF/dk = s/q and dF/dh = -c/q, q = 1 - k c - h s. So everything is one product of a small
+    matrix, which depends on the orbit alone, with eight functions of time.
     """
-    longitude, k, h, alpha, beta = _parts(u, reference_epoch, epochs)
-    w, by_longitude, by_k, by_h = unit_orbit(longitude, k, h)
-    conj_w = np.conj(w)
-    jacobian = np.empty((*w.shape[:-1], SIZE, w.shape[-1]), dtype=complex)
-    np.multiply(by_longitude, longitude, out=jacobian[..., 0, :])
-    jacobian[..., 1, :], jacobian[..., 2, :], jacobian[..., 3, :] = by_k, by_h, w
-    # the model's z comes out of the same product as its derivatives, in the place of w
-    inner = jacobian[..., :4, :]
-    mirrored = np.conj(inner)
-    inner *= alpha[..., None]
-    mirrored *= beta[..., None]
-    inner += mirrored
-    z = inner[..., 3, :].copy()
-    np.negative(inner[..., 0, :], out=inner[..., 0, :])
-    jacobian[..., 3, :], jacobian[..., 5, :] = w, conj_w
-    np.multiply(jacobian[..., 3::2, :], 1j, out=jacobian[..., 4::2, :])
-    return z, jacobian
+    u = np.asarray(u, dtype=float)
+    if u.size == SIZE:
+        # numpy is quicker with the plain numbers of one orbit than with arrays of one
+        parts = u.reshape(-1).tolist()
+        matrix, columns = _coefficients(*parts[1:]), parts[:3]
+    else:
+        parts = list(np.moveaxis(u, -1, 0))
+        matrix = np.moveaxis(_coefficients(*parts[1:]), (0, 1), (-2, -1))
+        columns = [part[..., None] for part in parts[:3]]
+    functions = _functions(*columns, epochs - reference_epoch)
+    return (matrix @ functions).reshape(*u.shape[:-1], SIZE + 1, epochs.size)
+
+
+def _functions(log_P: ArrayLike, k: ArrayLike, h: ArrayLike, time: FloatArray) -> FloatArray:
+    """The eight functions of time, shape (..., 8, n)."""
+    longitude = (TWO_PI * np.exp(-log_P)) * time
+    F = eccentric_longitude(longitude, k, h)
+    out = np.empty((*longitude.shape[:-1], 8, longitude.shape[-1]))
+    out[..., ONE, :] = 1.0
+    c, s, over = out[..., COS, :], out[..., SIN, :], out[..., LONG_COS:, :]
+    np.cos(F, out=c)
+    np.sin(F, out=s)
+    # q only scales derivatives, so that cancellation near e = 1 does not matter
+    q = c * -k
+    q -= h * s
+    q += 1.0
+    np.divide(out[..., COS : SIN + 1, :], q[..., None, :], out=over)
+    np.multiply(over, s[..., None, :], out=out[..., COS_SIN : SIN_SIN + 1, :])
+    np.multiply(over[..., 0, :], c, out=out[..., COS_COS, :])
+    over *= longitude[..., None, :]
+    return out
+
+
+def _coefficients(k, h, alpha_re, alpha_im, beta_re, beta_im) -> NDArray[np.complex128]:
+    """Coefficients of the derivatives and of z in the functions of time, shape (8, 8, ...)."""
+    alpha, beta = alpha_re + 1j * alpha_im, beta_re + 1j * beta_im
+    g = k + 1j * h
+    w0, wc, ws, eta, b = _unit_orbit(g)
+
+    def on_sky(value):  # z of a value of w
+        return alpha * value + beta * value.conjugate()
+
+    out = np.zeros((SIZE + 1, 8, *np.shape(k)), dtype=complex)
+    out[PLACE, COS] = by_c = on_sky(wc)
+    out[PLACE, SIN] = by_s = on_sky(ws)
+    out[PLACE, ONE] = on_sky(w0)
+    out[0, LONG_COS], out[0, LONG_SIN] = -by_s, by_c
+    out[1, COS_SIN], out[1, SIN_SIN] = by_s, -by_c
+    out[2, COS_COS], out[2, COS_SIN] = -by_s, by_c
+    # at fixed F: d eta = -(k dk + h dh)/eta and d b = b^2 (k dk + h dh)/eta
+    turn, slope = b * g, 0.5 / eta
+    for row, part, unit in ((1, k, 1.0), (2, h, 1j)):
+        fall = slope * part
+        mirrored = (fall * turn + unit) * turn
+        out[row, ONE] = -(alpha * unit + beta * unit.conjugate())
+        out[row, COS] = on_sky(mirrored - fall)
+        out[row, SIN] = on_sky(-1j * (mirrored + fall))
+    for column, value in ((ONE, w0), (COS, wc), (SIN, ws)):
+        mirrored = value.conjugate()
+        out[3, column], out[4, column] = value, 1j * value
+        out[5, column], out[6, column] = mirrored, 1j * mirrored
+    return out
+
+
+def _unit_orbit(g):
+    """w0, wc and ws (see `jacobian_and_place`), eta and b of g = k + i h, one or an array."""
+    e = abs(g)
+    eta = ((1.0 - e) * (1.0 + e)) ** 0.5
+    b = 1.0 / (1.0 + eta)
+    half, mirrored = 0.5 * (1.0 + eta), 0.5 * b * g * g
+    return -g, half + mirrored, 1j * (half - mirrored), eta, b
+
+
+def eccentric_longitude(longitude: FloatArray, k: ArrayLike, h: ArrayLike) -> FloatArray:
+    """F = E + varpi (radians) from the mean longitude; k and h are broadcast against it."""
+    varpi, e = np.arctan2(h, k), np.hypot(k, h)
+    # a single e is solved for faster than an array of one
+    F = eccentric_anomaly(longitude - varpi, e.item() if e.size == 1 else e)
+    F += varpi
+    return F
+
+
+def position_and_jacobian(
+    u: FloatArray, reference_epoch: float, epochs: FloatArray
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+    """z, shape (..., n), and its derivatives, shape (..., 7, n), of `jacobian_and_place`."""
+    both = jacobian_and_place(u, reference_epoch, epochs)
+    return both[..., PLACE, :], both[..., :PLACE, :]
 
 
 def regular_position(
     u: FloatArray, reference_epoch: float, epochs: FloatArray
 ) -> NDArray[np.complex128]:
     """z = x + i y (arcsec), shape (..., n), of orbits u, shape (..., 7)."""
-    longitude, k, h, alpha, beta = _parts(u, reference_epoch, epochs)
-    (w,) = unit_orbit(longitude, k, h, derivatives=False)
+    log_P, k, h, *constants = np.moveaxis(np.asarray(u, dtype=float), -1, 0)[..., None]
+    longitude = (TWO_PI * np.exp(-log_P)) * (epochs - reference_epoch)
+    F = eccentric_longitude(longitude, k, h)
+    w0, wc, ws, _, _ = _unit_orbit(k + 1j * h)
+    w = w0 + wc * np.cos(F) + ws * np.sin(F)
+    alpha, beta = constants[0] + 1j * constants[1], constants[2] + 1j * constants[3]
     return alpha * w + beta * np.conj(w)
-
-
-def _parts(u: FloatArray, reference_epoch: float, epochs: FloatArray) -> tuple[NDArray, ...]:
-    """Mean longitude, shape (..., n), and k, h, alpha and beta, shape (..., 1), of orbits u."""
-    u = np.asarray(u, dtype=float)
-    longitude = (TWO_PI * np.exp(-u[..., :1])) * (epochs - reference_epoch)
-    alpha, beta = u[..., 3:4] + 1j * u[..., 4:5], u[..., 5:6] + 1j * u[..., 6:7]
-    return longitude, u[..., 1:2], u[..., 2:3], alpha, beta
 
 
 def campbell_jacobian(u: FloatArray, reference_epoch: float) -> FloatArray:

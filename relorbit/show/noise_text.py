@@ -32,16 +32,17 @@ def noise_table(groups: Sequence[NoiseGroup]) -> str:
                 _zero_point(g.rho_offset, g.rho_offset_sigma, g.rho_offset_p, 100.0),
             ]
         rows.append([*cells, fixed(100.0 * g.share, 1), _named(g.down_weighted)])
-    heads = ["group", "measures", "across", "along", "across", "along"]
+    heads = ["group", "count", "across", "along", "across", "along"]
     units = ["", "", unit, unit, "times", "times"]
     if offsets:
         heads += ["theta offset", "rho offset"]
         units += ["deg", "%"]
-    heads += ["weight", "down-weighted"]
-    units += ["%", "measure"]
+    heads += ["weight", "down-"]
+    units += ["%", "weighted"]
     align = "lr" + "...." + ("ll" if offsets else "") + ".l"
     text = (
         "noise: errors of each group from its residuals, as a size and as times those given\n"
+        "or usual; the share of the weight; measures that count for little\n"
         + table(heads, rows, align, units)
     )
     if offsets:

@@ -12,6 +12,7 @@ from relorbit.show.text import WIDTH, warnings_text
 from relorbit.solve.posterior import Posterior
 
 ANY = 180.0  # half width in degrees from which an angle is not known at all
+NARROW = 54  # letters of a line at the side of a window
 SMALL = 1e-3  # numbers below are printed with an exponent
 LABELS = {
     "next periastron": "next periastron", "closest": "closest on the sky",
@@ -22,11 +23,16 @@ ERRORS = {"as-given": "as given", "from-residuals": "from the residuals"}
 ANGLES = {"node": 180.0, "omega": 360.0}
 
 
-def posterior_text(posterior: Posterior, summary: PosteriorSummary) -> str:
-    """All that is to be said of the samples of one pair."""
+def posterior_text(
+    posterior: Posterior, summary: PosteriorSummary, *, narrow: bool = False
+) -> str:
+    """All that is to be said of the samples of one pair; `narrow` for the side of a window."""
+    made_of = made_of_text(posterior)
+    if narrow:
+        made_of = "\n".join(textwrap.fill(line, NARROW) for line in made_of.split("\n"))
     parts = [
-        made_of_text(posterior),
-        interval_table(summary.intervals),
+        made_of,
+        interval_table(summary.intervals, narrow=narrow),
         modes_table(summary),
         noise_table(posterior.noise),
         warnings_text(posterior.warnings),
@@ -48,8 +54,11 @@ def made_of_text(p: Posterior) -> str:
     return "\n".join(lines)
 
 
-def interval_table(intervals: dict[str, Interval]) -> str:
-    """Medians with the central intervals of 68 and 95 per cent."""
+def interval_table(intervals: dict[str, Interval], *, narrow: bool = False) -> str:
+    """Medians with the central intervals of 68 and 95 per cent.
+
+    `narrow` leaves long units out, and names what is known by a word.
+    """
     rows = []
     for name, one in intervals.items():
         places = _places(one)
@@ -60,7 +69,13 @@ def interval_table(intervals: dict[str, Interval]) -> str:
         cells = [_figure(value + shift, places) for value in [one.median, *numbers]]
         if turn is not None and one.high68 - one.low68 > 0.6 * turn:
             cells = ["any", "", "", "", ""]
-        rows.append([LABELS.get(name, name), UNITS[name], *cells])
+        label, unit = LABELS.get(name, name), UNITS[name]
+        if narrow:
+            rows.append([f"{name} {unit}" if len(unit) < 4 else name, *cells])
+        else:
+            rows.append([label, unit, *cells])
+    if narrow:
+        return table(["", "median", "68 %", "to", "95 %", "to"], rows, "lrrrrr", gap=" ")
     heads = ["", "unit", "median", "68 % from", "to", "95 % from", "to"]
     return table(heads, rows, "ll.....")
 

@@ -59,22 +59,30 @@ def draw_residual_panels(across: Axes, along: Axes, residuals: Residuals) -> Non
     across.figure.align_ylabels([across, along])
 
 
-def draw_residuals_across(axes: Axes, residuals: Residuals) -> None:
-    """O-C of theta as arc length."""
-    _draw(axes, residuals, residuals.arc, residuals.arc_err, "across")
+def draw_residuals_across(
+    axes: Axes, residuals: Residuals, scale: Residuals | None = None
+) -> None:
+    """O-C of theta as arc length; `scale` are other residuals that set unit and height."""
+    scale = scale or residuals
+    limit = panel_limit(scale.arc, scale.arc_err, scale)
+    _draw(axes, residuals, residuals.arc, residuals.arc_err, "across", scale, limit)
 
 
-def draw_residuals_along(axes: Axes, residuals: Residuals) -> None:
-    """O-C of rho."""
-    _draw(axes, residuals, residuals.d_rho, residuals.rho_err, "along")
+def draw_residuals_along(
+    axes: Axes, residuals: Residuals, scale: Residuals | None = None
+) -> None:
+    """O-C of rho; `scale` as above."""
+    scale = scale or residuals
+    limit = panel_limit(scale.d_rho, scale.rho_err, scale)
+    _draw(axes, residuals, residuals.d_rho, residuals.rho_err, "along", scale, limit)
 
 
 def _draw(
-    axes: Axes, of: Residuals, value: FloatArray, error: FloatArray, name: str
-) -> None:
-    unit, factor = residual_unit(of)
-    value, error = value * factor, error * factor
-    limit = panel_limit(value, error, of)
+    axes: Axes, of: Residuals, value: FloatArray, error: FloatArray, name: str,
+    scale: Residuals, limit: float,
+) -> None:  # fmt: skip
+    unit, factor = residual_unit(scale)
+    value, error, limit = value * factor, error * factor, limit * factor
     quiet(axes)
     axes.axhline(0.0, color=INK, linewidth=THIN, zorder=1.5)
     far = np.abs(value) > limit

@@ -8,6 +8,7 @@ from matplotlib.collections import LineCollection
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
+from numpy.typing import NDArray
 
 from relorbit.derive.posterior import SampledEphemeris, interval
 from relorbit.errors import InputError
@@ -72,13 +73,11 @@ def sheaf_of_orbits(
     """
     refuse_few(posterior)
     rows = posterior.equal_rows(count, seed)
-    curves = _curves(posterior, rows)
     of = compared(posterior.best, measures, None)
     east, north = sky(of.theta, of.rho)
     places = np.stack([east, north], axis=-1)
     known = np.all(np.isfinite(places), axis=1)
-    small = np.argsort(posterior.a[rows], kind="stable")[: max(1, int(SEEN * count))]
-    needed = [curves[small].reshape(-1, 2), np.zeros((1, 2)), places[known & of.used]]
+    needed = [smaller_orbits(posterior, rows), np.zeros((1, 2)), places[known & of.used]]
     view = view_of(np.concatenate(needed), places[known & ~of.used], orientation)
     handles = mark_handles(of)
     handles.append(Line2D([], [], color=CURVE, linewidth=0.8, label=f"{count} orbits that fit"))
@@ -86,15 +85,30 @@ def sheaf_of_orbits(
     quiet(axes)
     frame_axes(axes, view)
     draw_primary(axes)
-    alpha = float(np.clip(20.0 / count, 0.08, 0.5))
-    lines = LineCollection(list(curves), colors=CURVE, linewidths=0.5, alpha=alpha, zorder=2)
-    lines.set_gid("sheaf")
-    axes.add_collection(lines, autolim=False)
+    draw_sheaf(axes, posterior, rows)
     draw_marks(axes, east, north, of, view.holds(east, north))
     draw_corners(axes, view)
     put_title(figure, title, "south up" if orientation == "eyepiece" else "")
     legend_below(figure, handles)
     return figure
+
+
+def draw_sheaf(
+    axes: Axes, posterior: Posterior, rows: NDArray[np.intp], colour: str = CURVE
+) -> LineCollection:
+    """Lay the orbits of `rows` under what is on a sky plane (east and north in arcsec)."""
+    curves = _curves(posterior, rows)
+    alpha = float(np.clip(20.0 / len(curves), 0.08, 0.5))
+    lines = LineCollection(list(curves), colors=colour, linewidths=0.5, alpha=alpha, zorder=1.8)
+    lines.set_gid("sheaf")
+    axes.add_collection(lines, autolim=False)
+    return lines
+
+
+def smaller_orbits(posterior: Posterior, rows: NDArray[np.intp]) -> FloatArray:
+    """East and north of points on those sampled orbits that a view should hold, shape (n, 2)."""
+    small = np.argsort(posterior.a[rows], kind="stable")[: max(1, int(SEEN * len(rows)))]
+    return _curves(posterior, rows[small]).reshape(-1, 2)
 
 
 def _curves(p: Posterior, rows: np.ndarray) -> FloatArray:

@@ -41,6 +41,7 @@ def find_basins(
     held: Holding | None = None,
     period_range: tuple[float, float] | None = None,
     on_progress: Callable[[float], None] | None = None,
+    starts: FloatArray | None = None,
 ) -> tuple[float, Refined]:
     """Every distinct orbit that the measures allow, without a starting guess.
 
@@ -53,6 +54,8 @@ def find_basins(
         Julian years; by default what the span and number of the measures allow.
     on_progress : callable, optional
         Called with the share done, 0 to 1; what it raises ends the work.
+    starts : ndarray, shape (c, 7), optional
+        What `starting_orbits` found, where it has been asked already.
 
     Returns
     -------
@@ -65,7 +68,9 @@ def find_basins(
     t0 = observations.mean_epoch
     data = sky_data(observations)
     report = on_progress or (lambda share: None)
-    u = starting_orbits(data, t0, held, period_range, lambda share: report(0.5 * share))
+    u = starts
+    if u is None:
+        u = starting_orbits(data, t0, held, period_range, lambda share: report(0.5 * share))
     few = _fewer(observations)
     sky = sky_problem(sky_data(few), t0)
     u = _follow(sky, u, held, lambda: report(0.5))

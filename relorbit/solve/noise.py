@@ -37,6 +37,9 @@ AT_REST = 1e-3  # change of ln sigma in one round
 LEAST_FREEDOM = 1e-3  # 1 - h of a value that the orbit follows
 STEPS = 8  # of the orbit in one round
 LARGEST_CHANGE = 1.0  # of ln sigma in one round
+# An estimate that is still behind the best one after so many times its last gain is let go
+FIRST_ROUNDS, PATIENCE = 3, 20.0
+SAME = 0.05  # deviances that differ by less are those of one orbit
 
 
 @dataclass(frozen=True)
@@ -122,6 +125,7 @@ def estimate(
     held: Holding | None = None,
     start: Noise | None = None,
     on_step: Callable[[], None] | None = None,
+    rival: float = np.inf,
 ) -> Noise:
     """Errors of groups and the orbit nearest to u, together.
 
@@ -137,8 +141,10 @@ def estimate(
         Factors to start from; by default they are read off the residuals of u, by medians.
     on_step : callable, optional
         Called in each round; what it raises ends the work.
+    rival : float
+        A deviance that has been reached: what will not come below it is not finished.
     """
-    return _Fit(o, layout, reference_epoch, held or Holding()).run(u, start, on_step)
+    return _Fit(o, layout, reference_epoch, held or Holding()).run(u, start, on_step, rival)
 
 
 def best_of(
@@ -150,8 +156,12 @@ def best_of(
     on_step: Callable[[], None] | None = None,
 ) -> Noise:
     """The most likely of the estimates that start from several orbits."""
-    found = [estimate(o, layout, u, reference_epoch, held, None, on_step) for u in orbits]
-    return min(found, key=lambda one: one.deviance)
+    best = None
+    for u in orbits:
+        rival = np.inf if best is None else best.deviance
+        one = estimate(o, layout, u, reference_epoch, held, None, on_step, rival)
+        best = one if best is None or one.deviance < rival else best
+    return best
 
 
 def _without_offset(o: Observations, group: NDArray[np.intp], offset: FloatArray) -> Observations:
@@ -190,7 +200,13 @@ class _Fit:
     def _sum(self, values: FloatArray) -> FloatArray:
         return np.bincount(self.cell, values, self.cells)
 
-    def run(self, u: FloatArray, start: Noise | None, on_step: Callable[[], None] | None) -> Noise:
+    def run(
+        self,
+        u: FloatArray,
+        start: Noise | None,
+        on_step: Callable[[], None] | None,
+        rival: float,
+    ) -> Noise:
         u = np.array(u, dtype=float)
         if start is None:
             r, _ = self._standardised(u, np.zeros(self.cell.size))
@@ -199,12 +215,15 @@ class _Fit:
             log_factor, self.offset = start.log_factor.ravel().copy(), start.offset.copy()
         r, J = self._standardised(u, log_factor[self.cell])
         weight = self.t.weight(r)
-        rounds = 0
-        for rounds in range(1, MOST_ROUNDS + 1):  # noqa: B007
+        rounds, deviance = 0, np.inf
+        for rounds in range(1, MOST_ROUNDS + 1):
             if on_step is not None:
                 on_step()
             u = self._orbit(u, log_factor[self.cell], weight)
             r, J = self._standardised(u, log_factor[self.cell])
+            deviance, before = self._deviance(r, log_factor), deviance
+            if rounds > FIRST_ROUNDS and self._is_behind(deviance, before - deviance, rival):
+                break
             _, design = self._design(J, u)
             freedom = self._freedom(design, weight)
             z = r / np.sqrt(freedom)
@@ -314,6 +333,17 @@ class _Fit:
         whole = SPREAD_WORTH * GROUP_SPREAD**2 + np.bincount(self.parent, here * gap, self.parents)
         self.spread = np.sqrt(whole / (SPREAD_WORTH + self.members))
 
+    def _deviance(self, r: FloatArray, log_factor: FloatArray) -> float:
+        """Minus twice the logarithm of the posterior density."""
+        prior = (log_factor - self.centre[self.parent]) / self.spread[self.parent]
+        sizes = 2.0 * log_factor[self.cell].sum()
+        return float(sizes + self.t.deviance(r).sum() + (prior**2).sum())
+
+    def _is_behind(self, deviance: float, gain: float, rival: float) -> bool:
+        """True where an estimate will not come below the deviance of another."""
+        gap = deviance - rival
+        return gap > PATIENCE * max(gain, 0.0) or (abs(gap) < SAME and abs(gain) < SAME)
+
     def _result(
         self, u: FloatArray, log_factor: FloatArray, weight: FloatArray, rounds: int
     ) -> Noise:
@@ -331,8 +361,6 @@ class _Fit:
             offset_sigma[group, kind] = np.sqrt(whole[free + slot, free + slot])
         of_row = np.full((len(self.o), 2), np.nan)
         of_row[self.rows, self.kind] = weight / self.t.full_weight
-        prior = (log_factor - self.centre[self.parent]) / self.spread[self.parent]
-        deviance = 2.0 * log_sigma.sum() + self.t.deviance(r).sum() + (prior**2).sum()
         sigma = np.where(self.present, 1.0 / np.sqrt(self.information), np.nan)
         return Noise(
             self.layout,
@@ -344,6 +372,6 @@ class _Fit:
             self.t0,
             u,
             basis @ whole[:free, :free] @ basis.T,
-            float(deviance),
+            self._deviance(r, log_factor),
             rounds,
         )  # fmt: skip

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from relorbit.orbit.kepler import FloatArray
-from relorbit.orbit.regular import SIZE, position_and_jacobian
+from relorbit.orbit.regular import PLACE, SIZE, jacobian_and_place
 from relorbit.solve.holding import Holding
 from relorbit.solve.linear import SkyData, solve_scaled
 from relorbit.solve.observations import Observations
@@ -25,41 +25,57 @@ FIRST_DAMPING, LESS_DAMPING, MORE_DAMPING = 1e-4, 0.1, 8.0
 MOST_DAMPING = 1e10  # an orbit that does not get better with as short a step as that is at rest
 SLOW = 20  # iterations after which chi2 is taken to have a bent valley
 LARGEST_STEP = 1.5  # in ln P, of one iteration
-# residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m), of c orbits (c, 7)
-WithJacobian = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
 
 
 @dataclass(frozen=True)
 class Problem:
-    """A least-squares problem in the regular coordinates of a reference epoch."""
+    """A least-squares problem in the regular coordinates of a reference epoch.
+
+    Attributes
+    ----------
+    reference_epoch : float
+        t0, Julian year.
+    rows : callable
+        From c orbits, shape (c, 7), the derivatives of the model by the seven coordinates and,
+        as the eighth row, the residuals (observed less computed), shape (c, 8, m), all
+        standardised.
+    """
 
     reference_epoch: float
-    with_jacobian: WithJacobian
+    rows: Callable[[FloatArray], FloatArray]
+
+    def with_jacobian(self, u: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Residuals, shape (c, m), and the Jacobian of the model, shape (c, 7, m)."""
+        rows = self.rows(u)
+        return rows[:, SIZE], rows[:, :SIZE]
 
 
 def polar_problem(observations: Observations, reference_epoch: float) -> Problem:
-    """Standardised residuals of theta (wrapped) and rho: the chi2 that a solution reports."""
+    """Standardised residuals of rho and theta (wrapped): the chi2 that a solution reports."""
     o = observations
     direction = np.exp(1j * o.theta)
 
-    def with_jacobian(u: FloatArray) -> tuple[FloatArray, FloatArray]:
-        z, dz = position_and_jacobian(u, reference_epoch, o.epoch)
+    def rows(u: FloatArray) -> FloatArray:
+        both = jacobian_and_place(u, reference_epoch, o.epoch)
+        z = both[:, PLACE]
         rho = np.maximum(np.abs(z), 1e-12)
         unit = np.conj(z)
         unit /= rho
         # turned to the direction of the pair, dz is along + i across: rho and theta alternate
-        dz *= unit[..., None, :]
-        weight = np.empty((*z.shape, 2))
-        weight[..., 0], weight[..., 1] = o.per_rho, o.per_theta / rho
-        jacobian = dz.view(float)
-        jacobian *= weight.reshape(*z.shape[:-1], 1, -1)
-        r = np.empty_like(weight)
-        np.multiply(o.rho - rho, o.per_rho, out=r[..., 0])
+        both *= unit[:, None]
+        weight = np.empty((*rho.shape, 2))
+        weight[..., 0] = o.per_rho
+        np.divide(o.per_theta, rho, out=weight[..., 1])
+        out = both.view(float)
+        out[:, :SIZE] *= weight.reshape(rho.shape[0], 1, -1)
+        np.subtract(o.rho, rho, out=z.real)
         unit *= direction
-        np.multiply(np.angle(unit), o.per_theta, out=r[..., 1])
-        return r.reshape(*z.shape[:-1], -1), jacobian
+        np.arctan2(unit.imag, unit.real, out=z.imag)
+        z.real *= o.per_rho
+        z.imag *= o.per_theta
+        return out
 
-    return Problem(reference_epoch, with_jacobian)
+    return Problem(reference_epoch, rows)
 
 
 def places_of_values(observations: Observations) -> NDArray[np.intp]:
@@ -75,14 +91,12 @@ def sky_problem(data: SkyData, reference_epoch: float) -> Problem:
     l21 = np.where(l11 > 0.0, data.w_xy / np.where(l11 > 0.0, l11, 1.0), 0.0)
     l22 = np.sqrt(np.maximum(data.w_yy - l21 * l21, 0.0))
 
-    def standardised(dz: NDArray[np.complex128]) -> FloatArray:
-        return np.concatenate([l11 * dz.real + l21 * dz.imag, l22 * dz.imag], axis=-1)
+    def rows(u: FloatArray) -> FloatArray:
+        both = jacobian_and_place(u, reference_epoch, data.epoch)
+        np.subtract(data.z, both[:, PLACE], out=both[:, PLACE])
+        return np.concatenate([l11 * both.real + l21 * both.imag, l22 * both.imag], axis=-1)
 
-    def with_jacobian(u: FloatArray) -> tuple[FloatArray, FloatArray]:
-        z, dz = position_and_jacobian(u, reference_epoch, data.epoch)
-        return standardised(data.z - z), standardised(dz)
-
-    return Problem(reference_epoch, with_jacobian)
+    return Problem(reference_epoch, rows)
 
 
 @dataclass(frozen=True)
@@ -135,54 +149,62 @@ def refine(
     u = held.put_back(np.array(u, dtype=float, ndmin=2), t0)
     chi2, normal, right = _normal_equations(problem, u)
     damping = np.full(chi2.size, FIRST_DAMPING)
-    active = np.arange(chi2.size)
+    end_u, end_chi2, still = u.copy(), chi2.copy(), np.ones(chi2.size, dtype=bool)
+    which = np.arange(chi2.size)  # of all orbits, those still under way, which u, chi2 ... hold
     iteration = 0
-    while active.size and iteration < most_iterations:
+    while which.size and iteration < most_iterations:
         iteration += 1
         if on_step is not None:
             on_step()
-        basis = held.directions(u[active], t0)
-        full, expected = _damped_step(
-            normal[active], right[active], damping[active], basis, columns
-        )
-        trial = u[active] + full
-        inside = np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E
-        inside &= np.isfinite(full).all(axis=1) & (np.abs(full[:, 0]) < LARGEST_STEP)
-        trial = held.put_back(np.where(inside[:, None], trial, u[active]), t0)
-        at_rest = (expected < tolerance) & (damping[active] < 1.0)
-        if at_rest.any():
+        basis = held.directions(u, t0)
+        step, expected = _damped_step(normal, right, damping, basis, columns)
+        trial = u + step
+        # false also where a step is not finite
+        inside = (np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E) & (expected < np.inf)
+        inside &= np.abs(step[:, 0]) < LARGEST_STEP
+        if not inside.all():
+            trial = np.where(inside[:, None], trial, u)
+        trial = held.put_back(trial, t0)
+        ends = (expected < tolerance) & (damping < 1.0)
+        if ends.any():
             # chi2 is as good as quadratic here: the last step needs no look at where it leads
-            last = active[at_rest]
-            u[last] = trial[at_rest]
-            chi2[last] -= np.where(inside, expected, 0.0)[at_rest]
-            active, trial, inside = active[~at_rest], trial[~at_rest], inside[~at_rest]
-            if not active.size:
+            end_u[which[ends]] = trial[ends]
+            end_chi2[which[ends]] = (chi2 - np.where(inside, expected, 0.0))[ends]
+            parts = which, u, chi2, normal, right, damping, trial, inside
+            which, u, chi2, normal, right, damping, trial, inside = _only(~ends, parts)
+            if not which.size:
                 break
         tried = _normal_equations(problem, trial)
         if iteration > SLOW and basis is None:
             # a bent valley: the constants, which are nearly linear, follow at once
             trial[:, 3:] += solve_scaled(tried[1][:, 3:, 3:], tried[2][:, 3:])
             tried = _normal_equations(problem, trial)
-        chi2_trial, normal_trial, right_trial = tried
-        better = inside & (chi2_trial < chi2[active])
-        damping[active] *= np.where(better, LESS_DAMPING, MORE_DAMPING)
-        moved = active[better]
-        u[moved], chi2[moved] = trial[better], chi2_trial[better]
-        normal[moved], right[moved] = normal_trial[better], right_trial[better]
-        active = active[better | (damping[active] <= MOST_DAMPING)]
-    still = np.ones(chi2.size, dtype=bool)
-    still[active] = False
-    return Refined(u, chi2, still, iteration)
+        better = inside & (tried[0] < chi2)
+        if better.all():
+            u, (chi2, normal, right) = trial, tried
+            damping *= LESS_DAMPING
+            continue
+        for part, new in zip((u, chi2, normal, right), (trial, *tried), strict=True):
+            part[better] = new[better]
+        damping *= np.where(better, LESS_DAMPING, MORE_DAMPING)
+        stuck = ~better & (damping > MOST_DAMPING)
+        if stuck.any():
+            end_u[which[stuck]], end_chi2[which[stuck]] = u[stuck], chi2[stuck]
+            parts = which, u, chi2, normal, right, damping
+            which, u, chi2, normal, right, damping = _only(~stuck, parts)
+    end_u[which], end_chi2[which], still[which] = u, chi2, False
+    return Refined(end_u, end_chi2, still, iteration)
+
+
+def _only(rows: NDArray[np.bool_], parts: tuple[NDArray, ...]) -> tuple[NDArray, ...]:
+    return tuple(part[rows] for part in parts)
 
 
 def _normal_equations(problem: Problem, u: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """chi2, shape (c,), J J', shape (c, 7, 7), and J r, shape (c, 7)."""
-    r, J = problem.with_jacobian(u)
-    return (
-        np.einsum("cm,cm->c", r, r),
-        J @ np.swapaxes(J, -1, -2),
-        (J @ r[..., None])[..., 0],
-    )
+    rows = problem.rows(u)
+    products = rows @ np.swapaxes(rows, -1, -2)
+    return products[:, SIZE, SIZE], products[:, :SIZE, :SIZE], products[:, :SIZE, SIZE]
 
 
 def _damped_step(

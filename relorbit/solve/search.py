@@ -130,7 +130,7 @@ def search(
         rows = slice(start, start + BLOCK)
         # short arcs leave the normal equations too close to singular for single precision
         kind = np.float64 if periods[rows].max() > ALWAYS_DOUBLE * span else np.float32
-        fields = _phase_bins((epoch - reference) / periods[rows, None], values)
+        fields = phase_bins((epoch - reference) / periods[rows, None], values)
         spectra = np.fft.rfft(fields.astype(kind), axis=-1)
         for column, e in enumerate(eccentricities):
             kernels = _kernels(e).astype(spectra.dtype)
@@ -166,7 +166,7 @@ def _normal_points(data: SkyData) -> tuple[FloatArray, FloatArray]:
     return epoch[total > 0.0], summed[:, total > 0.0]
 
 
-def _phase_bins(turns: FloatArray, values: FloatArray) -> FloatArray:
+def phase_bins(turns: FloatArray, values: FloatArray) -> FloatArray:
     """Share values, shape (f, n), out over bins of phase of turns, shape (p, n): (f, p, BINS)."""
     place = np.remainder(turns, 1.0) * BINS
     left = np.minimum(place.astype(np.intp), BINS - 1)
@@ -193,7 +193,7 @@ def _kernels(e: float) -> NDArray[np.complex128]:
     return spectra[:, : bins // 2 + 1] * (bins / BINS)
 
 
-def _correlations(spectra: NDArray, kernels: NDArray) -> NDArray:
+def correlations(spectra: NDArray, kernels: NDArray) -> NDArray:
     """Every spectrum, (f, p, h), with every kernel, (k, h), back in T: (f k, p, bins)."""
     products = spectra[:, None] * kernels[:, None]
     return np.fft.irfft(products, axis=-1).reshape(-1, spectra.shape[1], 2 * kernels.shape[1] - 2)
@@ -205,8 +205,8 @@ def _gain(spectra: NDArray, kernels: NDArray) -> NDArray:
     The gain is b' N^-1 b with the normal matrix N of (A, F, B, G) in 2-by-2 blocks A, B, B', C
     and b in the halves p and q.
     """
-    a11, a12, a22, b11, b12, b22, c11, c12, c22 = _correlations(spectra[:3], kernels[:3])
-    p1, p2, q1, q2 = _correlations(spectra[3:], kernels[3:])
+    a11, a12, a22, b11, b12, b22, c11, c12, c22 = correlations(spectra[:3], kernels[:3])
+    p1, p2, q1, q2 = correlations(spectra[3:], kernels[3:])
     # in place wherever an array is not needed again: new memory costs as much as the arithmetic
     ridge = 8.0 * np.finfo(a11.dtype).eps
     scale = a11 * a22

@@ -22,6 +22,7 @@ WELL_KNOWN_E = 0.2  # error of e up to which an orbit can be called circular
 VAGUE_NODE = 30.0  # error of the node, degrees, that is worth a warning
 NEARLY_FACE_ON = 60.0  # how far from edge-on, degrees, an orbit is nearly face-on
 WIDE_ERRORS, ENOUGH_DOF = 0.5, 8  # reduced chi2 under which assumed errors are too wide
+FEW_MEASURES = 6  # of a group, that do not tell its errors: common practice, no published source
 HIGHEST_E = 0.999  # beyond this an ellipse is no longer told from a needle
 POOR_FIT = 2.0  # reduced chi2 above which the measures disagree with their own errors
 PLAUSIBLE_MASS = (0.05, 300.0)  # total mass in solar masses: common practice, no published source
@@ -98,6 +99,23 @@ def _without_meaning(s: Solution) -> Iterator[Notice]:
         )
 
 
+def _of_small_groups(s: Solution) -> Iterator[Notice]:
+    small = [group.name for group in s.noise if group.measures < FEW_MEASURES]
+    if s.noise and s.dof < ENOUGH_DOF:
+        yield Notice(
+            "few-for-errors",
+            f"{s.dof} degrees of freedom are too few to tell errors from residuals: those found "
+            "lean on the ones given, or usual for the technique",
+        )
+    elif small:
+        names = "; ".join(small[:4]) + ("; ..." if len(small) > 4 else "")
+        yield Notice(
+            "few-for-errors",
+            f"fewer than {FEW_MEASURES} measures do not tell the errors of a group: those of "
+            f"{names} lean on their technique",
+        )
+
+
 def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notice]:
     yield from default_errors(o)
     if o.assumed.all() and s.reduced_chi2 < WIDE_ERRORS and s.dof >= ENOUGH_DOF:
@@ -118,6 +136,7 @@ def _of_the_measures(s: Solution, pair: Pair, o: Observations) -> Iterator[Notic
             "the measures scatter more than their errors allow: look for slips among the largest "
             "residuals",
         )
+    yield from _of_small_groups(s)
     yield from down_weighted(s.noise, len(o))
     with np.errstate(invalid="ignore"):
         wrong_side = s.residuals.used & (np.abs(s.residuals.d_theta) > 90.0)

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.stats import norm
 
 from relorbit.errors import InputError
 from relorbit.measures.table import Measures
@@ -20,10 +21,13 @@ from relorbit.solve.linear import sky_data
 from relorbit.solve.noise import Layout, Noise, best_of, estimate
 from relorbit.solve.observations import Observations, complete_errors
 from relorbit.solve.refine import Refined, places_of_values, polar_problem, refine, sky_problem
+from relorbit.solve.student import student
 
 ERRORS = ("as-given", "from-residuals")
 FOLLOWED = 6  # orbits of the first search whose noise is estimated
 LIGHT = 0.3  # relative weight below which a value is named: a residual above three sigma
+BEYOND_CHANCE = 0.01  # probability of so large a residual, the number of values considered
+ENOUGH = 2000  # measures on which orbits are sought and compared
 MUCH = 0.9  # change of the logarithm of an error that is worth another search
 WORSE_QUARTER = 0.25
 MOST_TURNS = 3  # how often orbit and weights may change places
@@ -157,36 +161,49 @@ def find_weighed_orbits(
     the observations with its weights.
     """
     report = on_progress or (lambda share: None)
-    t0, orbits = find_basins(o, held, period_range, lambda share: report(0.3 * share))
-    noise = best_of(o, layout, orbits.u[:FOLLOWED], t0, held, lambda: report(0.3))
+    few, part = _fewer(o, layout)
+    t0, orbits = find_basins(few, held, period_range, lambda share: report(0.3 * share))
+    noise = best_of(few, part, orbits.u[:FOLLOWED], t0, held, lambda: report(0.3))
     if not _as_given(noise):
-        level = _levelled(o)
-        pool = _moved(orbits.u, t0, level.mean_epoch)
-        t0, orbits = find_basins(level, held, period_range, lambda s: report(0.35 + 0.25 * s))
-        pool = np.concatenate([pool, orbits.u, _near_the_minima(level, t0, held, period_range)])
-        pool = _promising(o, layout, t0, pool)[:FOLLOWED]
-        other = best_of(o, layout, pool, t0, held, lambda: report(0.6))
+        level = _levelled(few)
+        data, level_t0 = sky_data(level), level.mean_epoch
+        starts = starting_orbits(data, level_t0, held, period_range)
+        # orbits at the minima of the map, before a slip has drawn them away
+        near = refine(sky_problem(data, level_t0), starts, held, FIRST_STEPS, 1e-2).u
+        pool = [_moved(orbits.u, t0, level_t0), near]
+        t0, orbits = find_basins(
+            level, held, period_range, lambda s: report(0.35 + 0.25 * s), starts
+        )
+        pool = _promising(few, part, t0, np.concatenate([*pool, orbits.u]))[:FOLLOWED]
+        other = best_of(few, part, pool, t0, held, lambda: report(0.6))
         noise = min(noise, other, key=lambda one: one.deviance)
         known, before = noise.u, noise.reference_epoch
-        second = _for_a_search(noise.weighted(o))
+        second = _for_a_search(noise.weighted(few))
         t0, orbits = find_basins(second, held, period_range, lambda s: report(0.65 + 0.25 * s))
         starts = [held.put_back(_moved(known[None], before, t0), t0)[0], *orbits.u[:FOLLOWED]]
-        noise = best_of(o, layout, starts, t0, held, lambda: report(0.95))
+        noise = best_of(few, part, starts, t0, held, lambda: report(0.95))
+    if few is not o:
+        noise = estimate(o, layout, noise.u, t0, held, None, lambda: report(0.96))
     return (t0, *settle_with_weights(o, noise, orbits.u, t0, held, lambda: report(0.98)))
+
+
+def _fewer(o: Observations, layout: Layout) -> tuple[Observations, Layout]:
+    """Of the rows of each large group so many, evenly through time, that `ENOUGH` are left."""
+    if len(o) <= ENOUGH:
+        return o, layout
+    most = max(ENOUGH // len(layout.names), 1)
+    keep = []
+    for slot in range(len(layout.names)):
+        rows = np.flatnonzero(layout.group == slot)
+        chosen = np.linspace(0.0, rows.size - 1.0, min(rows.size, most)).round().astype(int)
+        keep.append(rows[chosen])
+    rows = np.sort(np.concatenate(keep))
+    return o.select(rows), replace(layout, group=layout.group[rows])
 
 
 def _moved(u: NDArray[np.float64], t0: float, to: float) -> NDArray[np.float64]:
     """Orbits u, shape (c, 7), in the regular coordinates of another reference epoch."""
     return np.array([regular_from_elements(elements_from_regular(one, t0), to) for one in u])
-
-
-def _near_the_minima(
-    o: Observations, t0: float, held: Holding, period_range: tuple[float, float] | None
-) -> NDArray[np.float64]:
-    """Orbits at the minima of the search's map, before a slip has drawn them away from it."""
-    data = sky_data(o)
-    starts = starting_orbits(data, t0, held, period_range)
-    return refine(sky_problem(data, t0), starts, held, FIRST_STEPS, 1e-2).u
 
 
 def _promising(
@@ -205,9 +222,11 @@ def _promising(
 
 
 def _as_given(noise: Noise) -> bool:
-    """True where the errors given were about right and no slip was found."""
-    factors_near = np.abs(noise.log_factor).max() < MUCH
-    return bool(factors_near and np.nanmin(noise.weight) >= LIGHT)
+    """True where the errors given were about right and no value is off beyond chance."""
+    known = noise.weight[np.isfinite(noise.weight)]
+    farthest = float(norm.isf(0.5 * BEYOND_CHANCE / known.size))
+    lightest = student().weight(np.array(farthest)) / student().full_weight
+    return bool(np.abs(noise.log_factor).max() < MUCH and known.min() >= lightest)
 
 
 def _for_a_search(o: Observations) -> Observations:

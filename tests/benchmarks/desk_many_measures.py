@@ -57,7 +57,7 @@ def main() -> None:
         timed(desk, "set 1,000 measures aside", 6, lambda k: model.set_use(
             range(1000 * k, 1000 * k + 1000), False, "invented"))  # fmt: skip
         timed(desk, "nudge", 30, lambda k: desk.elements.nudge("e", (-1) ** k, True))
-        timed(desk, "zoom", 20, lambda k: desk.zoom(1.1 if k % 2 else 1 / 1.1))
+        timed(desk, "zoom", 20, lambda k: desk.commands.do("zoom_in" if k % 2 else "zoom_out"))
         model.flip([3])  # something new to keep, whatever the window's own clock has kept
         timed(desk, "keep unsaved work safe", 1, lambda k: desk.session.tick(1e9))
         timed(desk, "save", 1, lambda k: desk.session.save())

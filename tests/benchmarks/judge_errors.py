@@ -19,7 +19,7 @@ def main(measures: int, errors: str) -> None:
         one = judge_trial(seed, errors)
         if one is not None:
             trials.append(one)
-    theta, rho, probability, unknown, linear = np.array(trials).T
+    theta, rho, probability, unknown, linear, theta_1, rho_1 = np.array(trials).T
     print(f"{measures} measures ten years ahead, errors {errors}, of {seed} histories")
     print("orbits                count  var theta  var rho    both  beyond 4   "
           "chance below 10 %   1 %   0.1 %")  # fmt: skip
@@ -34,6 +34,9 @@ def main(measures: int, errors: str) -> None:
               f"{np.mean(rho[rows]**2):8.3f} {np.mean(both**2):7.3f} "
               f"{int((np.abs(both) > 4).sum()):9d} "
               f"{shares[0]:17.1f} % {shares[1]:4.1f} % {shares[2]:5.2f} %")  # fmt: skip
+        first = np.concatenate([theta_1[rows], rho_1[rows]])
+        print(f"    to first order: variance {np.mean(first**2):.3f}, beyond 4: "
+              f"{int((np.abs(first) > 4).sum())}")  # fmt: skip
     print("to first order, without refits, chance would be below 1 % for "
           f"{100 * np.mean(linear < 0.01):.1f} % and below 0.1 % for "
           f"{100 * np.mean(linear < 0.001):.1f} % of all")  # fmt: skip

@@ -109,3 +109,40 @@ def test_figures(run, tmp_path, figure):
         done = run("draw", EXAMPLES / f"{name}.ecsv", "--figure", figure, "--out", f"{name}.png")
         assert (done.returncode, done.stderr) == (0, "")
         assert (tmp_path / f"{name}.png").read_bytes().startswith(b"\x89PNG")
+
+
+def test_errors_come_from_the_residuals_unless_said_otherwise(run, tarn):
+    plain, asked, given = (
+        json.loads(run("solve", tarn, "--json", *more).stdout)
+        for more in ((), ("--errors", "from-residuals"), ("--errors", "as-given"))
+    )
+    assert plain == asked and plain["noise"] and not given["noise"]
+    assert plain["elements"] != given["elements"]
+    assert "--errors as-given" in run("solve", "--help").stdout
+
+
+def test_a_list_too_short_for_errors_is_solved_and_says_so(run, tmp_path):
+    (tmp_path / "few.csv").write_text(
+        "epoch,theta,rho\n1950,10,1.00\n1965,80,0.9\n1980,150,1.05\n1995,240,0.95\n2010,300,1.0\n"
+    )
+    done = run("solve", "few.csv")
+    assert (done.returncode, done.stderr) == (0, "")
+    told = " ".join(done.stdout.split())
+    assert "3 degrees of freedom are too few to tell errors from residuals" in told
+    assert "too few to tell" not in run("solve", "few.csv", "--errors", "as-given").stdout
+
+
+def test_small_groups_are_named(run):
+    told = " ".join(run("solve", EXAMPLES / "quill_8.ecsv").stdout.split())
+    assert "fewer than 6 measures do not tell the errors of a group: those of plate, Marlock Hill" \
+        in told  # fmt: skip
+
+
+def test_strips_show_the_list_before_and_after(run, tmp_path, tarn):
+    pair = relorbit.read(tarn)
+    from relorbit.measures.editing import with_flip, with_use
+
+    with_use(with_flip(pair, [3]), [7], False, "clouds").write(tarn)
+    done = run("draw", tarn, "--figure", "strips", "--out", "strips.png")
+    assert (done.returncode, done.stderr) == (0, "")
+    assert (tmp_path / "strips.png").read_bytes().startswith(b"\x89PNG")

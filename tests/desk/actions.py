@@ -29,10 +29,11 @@ PASTES = (
     "a,b,c\n1,2,3\n", "2010.1 33 1.1 0.5 0.01\n2011.1 34 1.15 0.5 0.01\n", "epoch,theta\n,\n",
 )  # fmt: skip
 KEYS = (
-    "f", "x", "u", "w", "o", "p", "0", "plus", "minus", "r", "bracketleft", "bracketright",
-    "Escape", "Delete", "F2", "F5", "F6", "Up", "Down", "Shift-Up", "Shift-Down", "Left", "Right",
-    "Return", "Tab", "Home", "End", "Prior", "Next", "Control-z", "Control-y", "Control-a",
-    "Control-c", "Control-v", "Control-k", "Control-l", "Control-e", "Control-period", "space",
+    "f", "x", "u", "w", "o", "p", "0", "plus", "minus", "r", "a", "m", "bracketleft",
+    "bracketright", "Escape", "Delete", "F2", "F5", "F6", "F7", "F8", "Up", "Down", "Shift-Up",
+    "Shift-Down", "Left", "Right", "Return", "Tab", "Home", "End", "Prior", "Next", "Control-z",
+    "Control-y", "Control-a", "Control-c", "Control-v", "Control-k", "Control-l", "Control-e",
+    "Control-period", "space",
 )  # fmt: skip
 
 
@@ -217,7 +218,7 @@ class RandomUser:
             desk.sky.dates.field.insert(0, self.pick(TEXTS))
             desk.sky.dates.field.event_generate("<Return>")
         elif what == 2:
-            desk.follows.tabs.select(int(self.rng.integers(4)))
+            desk.follows.tabs.select(int(self.rng.integers(desk.follows.tabs.index("end"))))
         elif what == 3:
             field = desk.follows.ephemeris.fields[self.pick(("from", "to", "step"))]
             field.delete(0, "end")
@@ -227,13 +228,14 @@ class RandomUser:
             wide, high = self.rng.integers(700, 1270), self.rng.integers(480, 740)
             desk.root.geometry(f"{wide}x{high}")
         else:
-            lines = desk.follows.orbits.tree.get_children()
+            tree = self.pick((desk.follows.orbits.tree, desk.follows.slips.tree))
+            lines = tree.get_children()
             if lines:
-                desk.follows.orbits.tree.selection_set(self.pick(lines))
+                tree.selection_set(self.pick(lines))
 
     def work(self) -> None:
-        """Begin a fit; wait for it, cancel it, or go on meanwhile."""
-        self.desk.commands.do(self.pick(("solve", "refine")))
+        """Begin a fit, samples or a look for slips; wait for it, cancel it, or go on meanwhile."""
+        self.desk.commands.do(self.pick(("solve", "refine", "sample", "vet")))
         what = self.rng.integers(3)
         if what == 0:
             self.desk.commands.do("stop")

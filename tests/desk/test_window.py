@@ -427,6 +427,7 @@ def test_every_command_is_in_a_menu_and_no_key_is_used_twice(desk: Desk) -> None
 def test_the_settings_remember_dark_orientation_and_dividers(example: Desk) -> None:
     press(example, "Control-d")
     press(example, "o")
+    settle(example, 0.2)  # a divider is dragged in a window that is drawn
     example.panes.upper.sashpos(0, 333)
     folder = example.settings.folder
     example.close()

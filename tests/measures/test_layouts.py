@@ -170,8 +170,8 @@ BAD = [
     ('form = "delimited"\n[techniques]\nM = "magic"', "key techniques.M: 'magic' is not a "
      "technique; use one of eyepiece, plate, camera, interferometer, space, unknown"),
     ('form = "delimited"\n[constants]\ntheta = 1', "key constants.theta: not a column; known are "
-     "theta_err, rho_err, weight, aperture_m, nights, theta_obs, technique, observer, reason, "
-     "note, equinox, epoch_obs, use, flip"),
+     "theta_err, rho_err, weight, aperture_m, nights, theta_obs, rho_obs, technique, observer, "
+     "reason, note, equinox, epoch_obs, vetted, use, flip"),
     ('form = "delimited"\n[observers]\nM = 1', "key observers.M: must be a text in quotation "
      "marks"),
     ('form = "fixed"\n[columns.theta]\nwidth = 3', "key columns.epoch: missing; every measure "
@@ -189,8 +189,8 @@ BAD = [
     ('form = "fixed"\n[columns.theta]\nwidth = 3\nunit = "mas"', "key columns.theta.unit: 'mas' "
      "is not a unit here; use one of deg, rad, arcmin"),
     ('form = "fixed"\n[columns.colour]\nwidth = 3', "key columns.colour: not a column; known are "
-     "epoch, theta, rho, theta_err, rho_err, weight, aperture_m, nights, theta_obs, technique, "
-     "observer, reason, note, equinox, epoch_obs, use, flip, year, month, day"),
+     "epoch, theta, rho, theta_err, rho_err, weight, aperture_m, nights, theta_obs, rho_obs, "
+     "technique, observer, reason, note, equinox, epoch_obs, vetted, use, flip, year, month, day"),
     ('form = "delimited"\n[columns.epoch]\nkind = "jd"', "key columns.epoch.header: missing; give "
      "the heading in the list"),
     ('form = "delimited"\nheader = false\n[columns.epoch]\nkind = "jd"', "key "

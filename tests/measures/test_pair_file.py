@@ -40,6 +40,8 @@ ROW = st.fixed_dictionaries(
         "equinox": st.sampled_from(["J2000", "date", "1950.0", "B1950.0"]),
         "theta_obs": st.none() | numbers(0.0, 360.0, exclude_max=True),
         "epoch_obs": WORDS,
+        "rho_obs": st.none() | numbers(0.0, 1e3),
+        "vetted": WORDS,
     }
 )
 ELEMENTS = st.builds(

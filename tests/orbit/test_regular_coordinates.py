@@ -19,7 +19,6 @@ from relorbit.orbit.regular import (
     position_and_jacobian,
     regular_from_elements,
     regular_position,
-    unit_orbit,
 )
 
 T0 = 1987.25
@@ -101,25 +100,6 @@ def test_jacobian_by_finite_differences(name):
         numerical = np.array([1.0, -8.0, 8.0, -1.0]) @ np.array(shifted) / (12.0 * h)
         scale = np.abs(numerical).max()
         np.testing.assert_allclose(jacobian[slot], numerical, rtol=0.0, atol=3e-9 * scale)
-
-
-@pytest.mark.parametrize(("k", "h"), [(0.0, 0.0), (0.3, -0.2), (-0.9, 0.1), (1e-9, 0.0)])
-def test_unit_orbit_derivatives(k, h):
-    longitude = np.linspace(-4.0, 9.0, 23)
-    w, by_longitude, by_k, by_h = unit_orbit(longitude, k, h)
-    np.testing.assert_array_equal(unit_orbit(longitude, k, h, derivatives=False)[0], w)
-    step, weights = 1e-4, np.array([1.0, -8.0, 8.0, -1.0])
-
-    def numerical(*direction):
-        moved = [
-            unit_orbit(longitude + n * step * direction[0], k + n * step * direction[1],
-                       h + n * step * direction[2])[0]
-            for n in (-2, -1, 1, 2)
-        ]  # fmt: skip
-        return weights @ np.array(moved) / (12.0 * step)
-
-    for exact, direction in ((by_longitude, (1, 0, 0)), (by_k, (0, 1, 0)), (by_h, (0, 0, 1))):
-        np.testing.assert_allclose(exact, numerical(*direction), rtol=0.0, atol=1e-7)
 
 
 def test_many_orbits_at_once():

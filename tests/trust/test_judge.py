@@ -8,8 +8,10 @@ import pytest
 from noisy_histories import WELL_KNOWN, judge_trial
 
 from relorbit import judge
+from relorbit.derive.ephemeris import ephemeris
 from relorbit.errors import InputError, Undetermined
 from relorbit.measures.pair import Pair, RecordedOrbit
+from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements, complex_position, polar
 from relorbit.solve.solver import solve
 
@@ -150,9 +152,44 @@ def test_a_short_arc_is_not_called_wrong_where_its_own_errors_allow_it():
 @pytest.mark.parametrize("seed", [6, 18])
 def test_a_refit_corrects_errors_of_first_order(seed):
     """Histories whose pair comes close to the primary: errors there are anything but small."""
-    _, _, probability, _, linear = judge_trial(seed, "as-given")
+    theta, rho, probability, _, linear, *by_first_order = judge_trial(seed, "as-given")
     assert linear < 1e-6
     assert probability > 0.05
+    assert max(abs(theta), abs(rho)) < min(2.4, max(map(abs, by_first_order)))
+
+
+def test_errors_by_profiles_are_those_of_first_order_where_the_orbit_is_well_known(recorded):
+    found = judge(recorded, rows([2011.3, 2012.4, 2013.5], seed=5))
+    plain = ephemeris(recorded.orbit(), [one.epoch for one in found.measures])
+    for k, one in enumerate(found.measures):
+        # where a measure lies on the spot, the profile says little: 10 %
+        assert one.theta_predicted_sigma == pytest.approx(plain.theta_sigma[k], rel=0.1)
+        assert one.rho_predicted_sigma == pytest.approx(plain.rho_sigma[k], rel=0.1)
+
+
+def test_errors_by_profiles_of_a_short_arc_are_those_of_either_side():
+    """Years later, a short arc allows angles farther on rather than farther back."""
+    epochs = np.linspace(1975.0, 1991.0, 30)
+    short = Pair.from_arrays(*np.array(rows(epochs, seed=11, error=0.02)).T)
+    short = short.with_orbit(solve(short).to_record("short"))
+    epoch, off = 2005.0, 25.0
+    theta = ephemeris(short.orbit(), [epoch]).theta[0]
+    backwards, onwards = (
+        judge(short, [[epoch, (theta + side * off) % 360.0, np.nan, 0.1, np.nan]]).measures[0]
+        for side in (-1.0, 1.0)
+    )
+    for one in (backwards, onwards):
+        assert abs(one.d_theta) == pytest.approx(off)
+        assert one.theta_in_sigma == pytest.approx(
+            one.d_theta / np.hypot(one.theta_err, one.theta_predicted_sigma)
+        )
+    assert backwards.theta_predicted_sigma < 0.9 * onwards.theta_predicted_sigma
+    # the same by a solution in which the angle is all but held
+    held = short.with_measures(short.measures.append(Measures.from_columns(
+        {"epoch": [epoch], "theta": [(theta + off) % 360.0], "rho": [None], "theta_err": [0.1]}
+    )))  # fmt: skip
+    rise = (solve(held).chi2 - solve(short).chi2) / solve(short).error_scale ** 2
+    assert onwards.theta_in_sigma == pytest.approx(np.sqrt(rise), rel=0.02)
 
 
 def test_measures_that_contradict_everything_are_not_explained(recorded):
