@@ -109,13 +109,10 @@ def test_errors_from_the_residuals_on_the_command_line(run, tarn):
     assert "ask for one of the two" in refused.stderr
 
 
-def test_one_sample_is_json_and_no_picture(run, tarn):
+def test_one_sample_is_json(run, tarn):
     done = run("sample", tarn, "--size", 1, "--json")
     assert done.returncode == 0, done.stderr
     assert json.loads(done.stdout)["size"] == 1
-    refused = run("sample", tarn, "--size", 5, "--bands", "b.png")
-    assert refused.returncode == 3
-    assert "are too few for a picture" in refused.stderr
 
 
 def test_kind_says_orbit_or_not_in_words(run, tarn, tmp_path):

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import argparse
 from dataclasses import replace
 
 import numpy as np
 import pytest
 from matplotlib.collections import LineCollection
 
+from relorbit.cli import sample as verb
 from relorbit.derive.posterior import sampled_ephemeris, summary
 from relorbit.errors import InputError, Undetermined
 from relorbit.show.corner_plot import corner_of_samples
@@ -101,6 +103,15 @@ def test_too_few_samples_are_said_and_not_drawn(covered, posterior):
     for draw in (corner_of_samples, sheaf_of_orbits, mass_histogram):
         with pytest.raises(Undetermined, match="5 effective samples are too few"):
             draw(few)
+
+
+@pytest.mark.parametrize("name", ["corner", "orbits", "bands", "masses"])
+def test_the_command_line_draws_no_picture_of_too_few(posterior, tmp_path, name):
+    path = tmp_path / "few.png"
+    said = dict.fromkeys(verb.FIGURES) | {name: str(path), "pair": "none", "any_epoch": False}
+    with pytest.raises(Undetermined, match="5 effective samples are too few"):
+        verb._draw(argparse.Namespace(**said), replace(posterior, effective_size=5.0))
+    assert not path.exists()
 
 
 def test_the_same_samples_make_the_same_picture(posterior):
