@@ -1,5 +1,5 @@
 """Draw a pair: the apparent orbit with the measures and their residuals, theta and rho against
-time, the residuals, the same before and after measures were flipped or set aside (strips), the
+time, the residuals, the same before and after measures were put right or set aside (strips), the
 weights of measures, the periodogram of the residuals, or a sheet with all of it fit to print. PNG,
 PDF or SVG by the file's name.
 """
@@ -103,14 +103,17 @@ def _figure(options: argparse.Namespace, pair: Pair) -> Any:
 
 
 def _strips(elements: Elements, pair: Pair) -> Any:
-    """The list as it was before any measure was flipped or set aside, and as it is."""
+    """The list as it was before any measure was corrected, flipped or set aside, and as it is."""
     from relorbit.measures.editing import with_flip, with_use
+    from relorbit.measures.vetting import undone
     from relorbit.show.strips_plot import strips_before_after
     from relorbit.solve.residuals import residuals
 
     m = pair.measures
-    rows = [k for k in range(len(m)) if m.flip[k] or not m.use[k]]
-    before = with_use(with_flip(pair, [k for k in rows if m.flip[k]]), rows, True)
+    rows = [k for k in range(len(m)) if m.flip[k] or not m.use[k] or m.vetted[k]]
+    before, _ = undone(pair)
+    before = with_flip(before, [k for k in rows if before.measures.flip[k]])
+    before = with_use(before, rows, True)
     return strips_before_after(
         residuals(elements, before.measures), residuals(elements, m), rows, title=pair.name
     )

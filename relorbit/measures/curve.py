@@ -35,12 +35,7 @@ def curve_through(
     neighbours : int
         How many measures tell a place.
     """
-    gap = np.abs(at[:, None] - epoch[None])
-    if apart is not None:
-        known = apart >= 0
-        gap[np.flatnonzero(known), apart[known]] = np.inf
-    count = min(neighbours, epoch.size - (apart is not None))
-    near = np.argsort(gap, axis=1, kind="stable")[:, :count]
+    near = _nearest(epoch, at, apart, min(neighbours, epoch.size - (apart is not None)))
     t, w = epoch[near] - at[:, None], z[near]
     dt = t[:, :, None] - t[:, None, :]
     same = np.abs(dt) < 1e-6
@@ -52,6 +47,25 @@ def curve_through(
     place = np.median(rest.real, axis=1) + 1j * np.median(rest.imag, axis=1)
     off = np.abs(rest - place[:, None])
     return place, np.median(off, axis=1) / 1.1774  # the median of a circular Gaussian
+
+
+def _nearest(
+    epoch: FloatArray, at: FloatArray, apart: NDArray[np.intp] | None, count: int
+) -> NDArray[np.intp]:
+    """The `count` measures nearest in time to each place, shape (m, count).
+
+    In order of time they stand side by side: only a window around each place is looked at.
+    """
+    order = np.argsort(epoch, kind="stable")
+    sides = np.arange(-(count + 1), count + 1)
+    slots = np.searchsorted(epoch[order], at)[:, None] + sides
+    inside = (slots >= 0) & (slots < epoch.size)
+    rows = order[np.clip(slots, 0, epoch.size - 1)]
+    gap = np.where(inside, np.abs(epoch[rows] - at[:, None]), np.inf)
+    if apart is not None:
+        gap[rows == apart[:, None]] = np.inf
+    near = np.argsort(gap, axis=1, kind="stable")[:, :count]
+    return np.take_along_axis(rows, near, axis=1)
 
 
 def _median_of_medians(slope: NDArray[np.complex128]) -> NDArray[np.complex128]:

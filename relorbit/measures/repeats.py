@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Iterator
 from decimal import Decimal
 
 import numpy as np
@@ -116,26 +117,24 @@ def _alike(
 def _means(
     m: Measures, order: NDArray, values: tuple[NDArray, ...], places: list[NDArray]
 ) -> list[Finding]:
-    found, taken = [], set()
-    for row in order.tolist():
+    """`order` holds the rows of one observer and technique in order of time."""
+    found, taken = [], np.zeros(len(m), dtype=bool)
+    epochs = values[0][order]
+    starts, ends = (np.searchsorted(epochs, epochs + side) for side in (-SEASON, SEASON))
+    of_one_night = ~(m.nights[order] > 1.0)
+    for row, start, end in zip(order.tolist(), starts, ends, strict=True):
         told = m.nights[row]
-        if row in taken or (np.isfinite(told) and told < 2) or not m.has_theta[row]:
+        if taken[row] or (np.isfinite(told) and told < 2) or not m.has_theta[row]:
             continue
-        near = [
-            other for other in order.tolist()
-            if other != row and other not in taken
-            and abs(values[0][other] - values[0][row]) < SEASON
-            and not m.nights[other] > 1.0
-        ]  # fmt: skip
+        near = order[start:end][of_one_night[start:end]]
+        near = near[~taken[near] & (near != row)]
         sizes = range(2, MOST_NIGHTS + 1) if not np.isfinite(told) else [int(told)]
-        nights = next(
-            (run for size in sizes for run in _runs(near, size)
-             if _is_mean(row, run, values, places)), None,
-        )  # fmt: skip
+        runs = _runs_that_may_be(row, near, sizes, values, places)
+        nights = next((run for run in runs if _is_mean(row, run, values, places)), None)
         if nights is None:
             continue
-        taken |= {row, *nights}
-        which = ", ".join(str(night + 1) for night in sorted(nights))
+        taken[[row, *nights]] = True
+        which = ", ".join(str(night + 1) for night in sorted(nights.tolist()))
         text = f"the mean of the nights that stand beside it, measures {which}"
         change = set_aside(m, row, f"mean of measures {which}")
         sure = SURE if np.isfinite(told) else LIKELY
@@ -143,13 +142,37 @@ def _means(
     return found
 
 
-def _runs(near: list[int], size: int) -> list[list[int]]:
-    """Sets of that many rows that follow one another."""
-    return [near[at : at + size] for at in range(len(near) - size + 1)]
+def _runs_that_may_be(
+    row: int,
+    near: NDArray,
+    sizes: Iterable[int],
+    values: tuple[NDArray, ...],
+    places: list[NDArray],
+) -> Iterator[NDArray]:
+    """Sets of rows that follow one another and have the row for a mean, but for fine rounding."""
+    sums, allowed = [], []
+    for column in range(3):
+        own, others = values[column][row], values[column][near]
+        if not (np.isfinite(own) and np.isfinite(others).all()):
+            continue
+        gap = others - own
+        if column == 1:
+            gap = (gap + 180.0) % 360.0 - 180.0
+        sums.append(np.concatenate([[0.0], np.cumsum(gap)]))
+        coarsest = int(places[column][near].min(initial=DECIMALS))
+        allowed.append(_half(places[column][row]) + _half(coarsest))
+    for size in sizes:
+        if size > near.size:
+            return
+        fits = np.ones(near.size - size + 1, dtype=bool)
+        for total, most in zip(sums, allowed, strict=True):
+            fits &= np.abs(total[size:] - total[:-size]) <= size * most + SAME
+        for at in np.flatnonzero(fits):
+            yield near[at : at + size]
 
 
 def _is_mean(
-    row: int, nights: list[int], values: tuple[NDArray, ...], places: list[NDArray]
+    row: int, nights: NDArray, values: tuple[NDArray, ...], places: list[NDArray]
 ) -> bool:
     for column in range(3):
         own = values[column][row]

@@ -25,7 +25,7 @@ from relorbit.solve.student import student
 UNEXPLAINED = 34.0  # the price of a measure that no slip explains
 SMALLEST_FACTOR, LARGEST_FACTOR = 0.05, 1e4
 LEAST_FACTOR_OF_GIVEN = 1.0  # errors that a list gives are taken to be no larger than given
-BLOCK = 8  # orbits at a time: bounds the memory
+BLOCK = 100_000  # trials of measures, times orbits, at a time: bounds the memory
 STEPS = 8
 FOLDED = 4.0  # price of a flip below which quadrants are as good as unknown
 
@@ -191,8 +191,9 @@ def costs(
 def scores(d: SlipData, u: FloatArray) -> FloatArray:
     """Minus twice the logarithm of how likely the measures are by each orbit, shape (c,)."""
     found = []
-    for start in range(0, len(u), BLOCK):
-        r_theta, r_rho = misfits(d, u[start : start + BLOCK])
+    step = max(1, BLOCK // d.tried.epoch.size)
+    for start in range(0, len(u), step):
+        r_theta, r_rho = misfits(d, u[start : start + step])
         factor = factors(d, r_theta, r_rho)
         best = costs(d, r_theta, r_rho, factor).min(axis=1)
         total = np.minimum(best, UNEXPLAINED).sum(axis=1)
