@@ -61,14 +61,18 @@ def add_fit(parser: argparse.ArgumentParser) -> None:
     )
 
 
-def add_errors(parser: argparse.ArgumentParser) -> None:
-    """Where the errors of the measures come from."""
+def add_errors(parser: argparse.ArgumentParser, usual: str = DEFAULT_ERRORS) -> None:
+    """Where the errors of the measures come from; `usual` where nothing is said.
+
+    Samples take the errors given: they are there for few measures too, whose residuals say nothing.
+    """
+    parser.set_defaults(usual_errors=usual)
     parser.add_argument(
         "--errors",
         choices=("from-residuals", "as-given"),
         default=None,
         help="estimate the error of each group of measures with the orbit, slips down-weighted, or "
-        f"take the errors given (default: {DEFAULT_ERRORS})",
+        f"take the errors given (default: {usual})",
     )
     parser.add_argument(
         "--group-by",
@@ -167,7 +171,7 @@ def errors(options: argparse.Namespace) -> str:
     """Where errors come from: asked for, or needed by groups and zero points, or the default."""
     if options.errors is None and (options.group_by or options.offsets):
         return "from-residuals"
-    return options.errors or DEFAULT_ERRORS
+    return options.errors or options.usual_errors
 
 
 def short_arc(pair: Pair, options: argparse.Namespace, error: Undetermined) -> Undetermined:

@@ -38,7 +38,7 @@ def configure(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--epoch-range", metavar="FIRST:LAST", help="use only measures of these years"
     )
-    common.add_errors(parser)
+    common.add_errors(parser, "as-given")
     common.add_json(parser)
 
 

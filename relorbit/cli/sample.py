@@ -47,7 +47,7 @@ def configure(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--epoch-range", metavar="FIRST:LAST", help="use only measures of these years"
     )
-    common.add_errors(parser)
+    common.add_errors(parser, "as-given")
     parser.add_argument(
         "--scale-errors", action="store_true",
         help="enlarge the errors given by the root of reduced chi2, where that is above 1",

@@ -230,9 +230,10 @@ def softened(log_weight: FloatArray, least: float) -> FloatArray:
     finite = np.isfinite(log_weight)
     if np.count_nonzero(finite) <= least:
         return normalised(np.where(finite, 0.0, -np.inf))
+    known = np.where(finite, log_weight, 0.0)
     low, high = 0.0, 1.0
     for _ in range(30):
         power = 0.5 * (low + high)
-        tried = normalised(np.where(finite, power * log_weight, -np.inf))
+        tried = normalised(np.where(finite, power * known, -np.inf))
         low, high = (power, high) if effective_size(tried) >= least else (low, power)
-    return normalised(np.where(finite, low * log_weight, -np.inf))
+    return normalised(np.where(finite, low * known, -np.inf))

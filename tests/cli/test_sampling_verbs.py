@@ -160,3 +160,14 @@ def test_heron_is_a_short_arc_that_sample_answers(run):
     for name, value in truth.items():
         one = json.loads(done.stdout)["intervals"][name]
         assert one["low95"] < value < one["high95"]
+
+
+def test_three_measures_are_sampled_with_their_errors_as_given(run, tmp_path):
+    path = tmp_path / "three.csv"
+    path.write_text(HEADER + "2001.5,120,1.23,0.5,0.01\n2009.5,140,1.2,0.5,0.01\n"
+                    "2018.2,161,1.1,0.5,0.01\n")  # fmt: skip
+    done = run("sample", path, "--size", 300)
+    assert done.returncode == 0, done.stderr
+    assert "errors as given" in done.stdout
+    assert "6 values for 7 unknowns" in " ".join(done.stdout.split())
+    assert run("kind", path).returncode == 0
