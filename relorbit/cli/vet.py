@@ -68,8 +68,8 @@ def _found(pair: Pair, rows: set[int] | None, options: argparse.Namespace) -> li
     from relorbit.solve.vetted import vet
 
     orbit = None if options.orbit is None else pair.orbit(options.orbit)
-    with common.waiting("vetting"):
-        findings = vet(pair, orbit)
+    with common.progress("vetting") as report:
+        findings = vet(pair, orbit, on_progress=report)
     return [one for one in findings if rows is None or one.row in rows]
 
 

@@ -9,6 +9,7 @@ taken, and the other one reported where that is no clear majority.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -103,14 +104,16 @@ def joint_quadrants(pair: Pair) -> tuple[Assignment, ...]:
     return tuple(found)
 
 
-def joint_orbits(d: SlipData) -> tuple[SlipData, list[tuple[FloatArray, float]]]:
+def joint_orbits(
+    d: SlipData, on_step: Callable[[], None] | None = None
+) -> tuple[SlipData, list[tuple[FloatArray, float]]]:
     """The orbits of a list whose quadrants are in doubt, as those of `robust_orbits`.
 
     At first either quadrant is as likely; then the share of those that the best orbit flips is
     taken for their probability. The data are returned with that.
     """
     even = d.in_doubt(0.5)
-    found = robust_orbits(even)
+    found = robust_orbits(even, on_step)
     share = float(np.mean(on_the_side_of_most(even, found[0][0])[1]))
     d = d.in_doubt(float(np.clip(share, LEAST_SHARE, 0.5)))
     orbits = []

@@ -8,6 +8,7 @@ searched once more.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -32,34 +33,47 @@ from relorbit.solve.slip_fit import (
 )
 
 FIRST, SECOND, LAST = 14, 5, 8  # orbits tried at first and then, and the most turns of the best
+STEPS_IN_ALL = 2 * (FIRST + SECOND)
 CAP = 2.5  # separations beyond this many times the upper quartile are cut
 FLATTEST = 0.1  # sine of the inclination below which it is not told from 0
 FEWEST_ON_CURVE = 0.6  # share of measures that a curve must explain to be trusted
 
 
-def robust_orbits(d: SlipData) -> list[tuple[FloatArray, float]]:
+def robust_orbits(
+    d: SlipData, on_step: Callable[[], None] | None = None
+) -> list[tuple[FloatArray, float]]:
     """The orbits that make the measures likeliest, slips allowed for, the best first.
 
     Each is u, shape (7,), with minus twice the logarithm of its probability, but for a constant.
+    `on_step` is called about `STEPS_IN_ALL` times; what it raises ends the work.
     """
+    tell = on_step or (lambda: None)
     pool = [_starts(d, levelled(d.o))]
     trusted = _on_the_curve(d.o)
     if trusted is not None:
         pool.append(_starts(d, trusted))
     if d.folded:
         pool.append(_folded_starts(d, levelled(d.o)))
-    found = _best(d, np.concatenate(pool))
+    found = _best(d, np.concatenate(pool), tell)
     again = _starts(d, without_slips(d, found[0][0]))
-    other = _best(d, np.concatenate([found[0][0][None], again]))
+    other = _best(d, np.concatenate([found[0][0][None], again]), tell)
     return sorted(found + other, key=lambda one: one[1])
 
 
-def _best(d: SlipData, pool: FloatArray) -> list[tuple[FloatArray, float]]:
+def _best(
+    d: SlipData, pool: FloatArray, tell: Callable[[], None]
+) -> list[tuple[FloatArray, float]]:
     pool = pool[np.all(np.isfinite(pool), axis=1)]
     first = pool[np.argsort(scores(d, pool), kind="stable")[:FIRST]]
-    tried = [settled(d, u, 2) for u in first]
+    tried = []
+    for u in first:
+        tell()
+        tried.append(settled(d, u, 2))
     order = np.argsort([score for _, score in tried], kind="stable")[:SECOND]
-    ready = [settled(d, tried[slot][0], LAST)[0] for slot in order]
+    ready = []
+    for slot in order:
+        tell()
+        ready.append(settled(d, tried[slot][0], LAST)[0])
     return sorted(((u, improbability(d, u)) for u in ready), key=lambda one: one[1])
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from itertools import count
 
 import numpy as np
 
@@ -21,7 +22,7 @@ from relorbit.solve.left_in_equinox import left_in_another_equinox
 from relorbit.solve.observations import observe
 from relorbit.solve.quadrants import clear_majority, joint_orbits
 from relorbit.solve.slip_fit import SlipData, factors, likeliest, misfits, slip_data
-from relorbit.solve.slip_search import robust_orbits
+from relorbit.solve.slip_search import STEPS_IN_ALL, robust_orbits
 from relorbit.solve.trying import (
     STRANGE,
     Trial,
@@ -62,9 +63,15 @@ def vet(
         In the order of the measures, at most one for each.
     """
     report = on_progress or (lambda share: None)
+    steps = count(1)
+
+    def tell() -> None:
+        report(min(0.6 * next(steps) / STEPS_IN_ALL, 0.6))
+
+    report(0.0)
     doubled = repeated(pair.measures)
     rows = {one.row for one in doubled}
-    found, trial, d = _against_the_others(pair, orbit, rows)
+    found, trial, d = _against_the_others(pair, orbit, rows, tell)
     report(0.6)
     left: list[Finding] = []
     if d is not None and trial is not None and trial.u is not None:
@@ -72,7 +79,7 @@ def vet(
         left = left_in_another_equinox(pair, d, trial, {*rows, *sound})
     if left:
         # theta of date had its part in what the others said: ask them again
-        found, _, _ = _against_the_others(applied(pair, left), orbit, rows)
+        found, _, _ = _against_the_others(applied(pair, left), orbit, rows, tell)
         of_date = {one.row: one for one in left}
         found = [_after(of_date[one.row], one) if one.row in of_date else one for one in found]
         again = {one.row for one in found}
@@ -82,12 +89,12 @@ def vet(
 
 
 def _against_the_others(
-    pair: Pair, orbit: Orbit, doubled: set[int]
+    pair: Pair, orbit: Orbit, doubled: set[int], tell: Callable[[], None]
 ) -> tuple[list[Finding], Trial | None, SlipData | None]:
     d = _data(pair.measures, doubled)
     if d is None:
         return [], None, None
-    trial = _tried(d, orbit)
+    trial = _tried(d, orbit, tell)
     return _findings(pair.measures, d, trial), trial, d
 
 
@@ -111,14 +118,14 @@ def _data(measures: Measures, doubled: set[int]) -> SlipData | None:
     return slip_data(measures, o, other_dates(measures.epoch, measures.epoch_obs))
 
 
-def _tried(d: SlipData, orbit: Orbit) -> Trial:
+def _tried(d: SlipData, orbit: Orbit, tell: Callable[[], None]) -> Trial:
     if orbit is not None:
         return _tried_against_that(d, orbit)
     if not enough_for_an_orbit(d.o):
         return tried_against_curve(d)
-    u, improbability = robust_orbits(d)[0]
+    u, improbability = robust_orbits(d, tell)[0]
     if _in_doubt(d, u):
-        joint, orbits = joint_orbits(d)
+        joint, orbits = joint_orbits(d, tell)
         if orbits[0][1] < improbability:
             d, u = joint, orbits[0][0]
     return tried_against_orbit(d, u)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import tracemalloc
 from dataclasses import replace
 
 import numpy as np
@@ -17,6 +18,7 @@ from relorbit.measures.curve import curve_through, off_curve
 from relorbit.measures.dates import julian_years, other_dates
 from relorbit.measures.pair import Pair
 from relorbit.measures.reduction import precession_of_date
+from relorbit.measures.repeats import repeated
 from relorbit.measures.slips import KINDS, trials
 from relorbit.measures.vetting import Finding, applied, corrected, epochs_before, set_aside, undone
 from relorbit.orbit.elements import Elements
@@ -398,3 +400,32 @@ def test_findings_as_json():
     assert told["change"]["rho_obs"] == {"before": None, "after": 2.0 * R}
     assert told["row"] == ROW and told["kind"] == "rho-factor"
     assert isinstance(found, relorbit.Finding)
+
+
+def test_work_tells_how_far_it_is_and_ends_when_asked():
+    class Enough(Exception):
+        pass
+
+    shares = []
+
+    def report(share):
+        shares.append(share)
+        if share > 0.3:
+            raise Enough
+
+    with pytest.raises(Enough):
+        vet(CLEAN, on_progress=report)
+    assert len(shares) > 10
+    assert shares == sorted(shares)
+
+
+def test_many_measures_are_vetted_within_bounded_memory():
+    """A mean beside its nights, and neighbours on a curve, without a table of all by all."""
+    pair = clean(seed=4, count=1500)
+    tracemalloc.start()
+    assert repeated(pair.measures) == []
+    z = pair.measures.rho * np.exp(1j * np.radians(pair.measures.theta))
+    off_curve(pair.measures.epoch, z)
+    _, peak = tracemalloc.get_traced_memory()
+    tracemalloc.stop()
+    assert peak < 12e6  # 1,500 by 1,500 numbers are 18 MB
