@@ -145,6 +145,8 @@ def deviations(
         z, dz = position_and_jacobian(regular_from_elements(elements, t0), t0, epoch)
         J = np.concatenate(polar_derivatives(z, dz), axis=1)
         orbit = J.T @ uncertainty.covariance @ J
+        # rounding may leave the variance of what is hardly known a little below 0
+        np.fill_diagonal(orbit, np.maximum(np.diag(orbit), 0.0))
     d_theta = np.remainder(theta - predicted_theta + 180.0, 360.0) - 180.0
     gap = np.concatenate([np.radians(d_theta), rho - predicted_rho])
     own = np.concatenate([np.radians(theta_err), rho_err])

@@ -26,6 +26,8 @@ from relorbit.solve.solution import Solution
 
 WORTH_A_SEARCH = 1.5  # sigma beyond which other basins than the orbit's are tried
 MOST_STARTS = 6
+# probability of chi2 by chance below which the errors of the measures are taken for too small
+TOO_SMALL = 0.05
 # rise of chi2 up to which an orbit is as good as the best one of the same measures
 THE_SAME = 0.5
 # rise of chi2 beyond which an orbit is not that of its own measures: chance alone exceeds it in
@@ -51,7 +53,9 @@ class RefitTest:
     ) -> None:
         self.before, self.new, self.report = before, new, report
         self.old = _with_weights(before, old)
-        self.scale = before.error_scale**2
+        # a reduced chi2 a little above 1 is chance, and would make every test too lenient
+        chance = float(chi2_distribution.sf(before.chi2, before.dof)) if before.dof > 0 else 1.0
+        self.scale = before.error_scale**2 if chance < TOO_SMALL else 1.0
         o = observe(self.old)
         t0 = o.mean_epoch
         start = regular_from_elements(before.elements, t0)

@@ -24,6 +24,7 @@ HIGHEST_E = 0.99999
 FIRST_DAMPING, LESS_DAMPING, MORE_DAMPING = 1e-4, 0.1, 8.0
 MOST_DAMPING = 1e10  # an orbit that does not get better with as short a step as that is at rest
 SLOW = 20  # iterations after which chi2 is taken to have a bent valley
+BLOCK = 100_000  # residuals of many orbits at a time: bounds the memory
 LARGEST_STEP = 1.5  # in ln P, of one iteration
 
 
@@ -35,6 +36,8 @@ class Problem:
     ----------
     reference_epoch : float
         t0, Julian year.
+    values : int
+        m, the number of residuals.
     rows : callable
         From c orbits, shape (c, 7), the derivatives of the model by the seven coordinates and,
         as the eighth row, the residuals (observed less computed), shape (c, 8, m), all
@@ -42,6 +45,7 @@ class Problem:
     """
 
     reference_epoch: float
+    values: int
     rows: Callable[[FloatArray], FloatArray]
 
     def with_jacobian(self, u: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -75,7 +79,7 @@ def polar_problem(observations: Observations, reference_epoch: float) -> Problem
         z.imag *= o.per_theta
         return out
 
-    return Problem(reference_epoch, rows)
+    return Problem(reference_epoch, 2 * len(o), rows)
 
 
 def places_of_values(observations: Observations) -> NDArray[np.intp]:
@@ -96,7 +100,7 @@ def sky_problem(data: SkyData, reference_epoch: float) -> Problem:
         np.subtract(data.z, both[:, PLACE], out=both[:, PLACE])
         return np.concatenate([l11 * both.real + l21 * both.imag, l22 * both.imag], axis=-1)
 
-    return Problem(reference_epoch, rows)
+    return Problem(reference_epoch, 2 * data.epoch.size, rows)
 
 
 @dataclass(frozen=True)
@@ -202,8 +206,11 @@ def _only(rows: NDArray[np.bool_], parts: tuple[NDArray, ...]) -> tuple[NDArray,
 
 def _normal_equations(problem: Problem, u: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """chi2, shape (c,), J J', shape (c, 7, 7), and J r, shape (c, 7)."""
-    rows = problem.rows(u)
-    products = rows @ np.swapaxes(rows, -1, -2)
+    products = np.empty((len(u), SIZE + 1, SIZE + 1))
+    step = max(1, BLOCK // problem.values)
+    for start in range(0, len(u), step):
+        rows = problem.rows(u[start : start + step])
+        np.matmul(rows, np.swapaxes(rows, -1, -2), out=products[start : start + step])
     return products[:, SIZE, SIZE], products[:, :SIZE, :SIZE], products[:, :SIZE, SIZE]
 
 

@@ -187,12 +187,18 @@ def test_killed_in_mid_save_the_old_file_survives(tmp_path):
 def test_interrupt_is_one_line_and_status_130(tmp_path):
     fifo = tmp_path / "list.csv"
     os.mkfifo(fifo)
+    # tests that run in the background are started with interrupts ignored, and hand that on
     reader = subprocess.Popen(
-        [COMMAND, "solve", str(fifo)], stderr=subprocess.PIPE, stdout=subprocess.PIPE, text=True
-    )
-    time.sleep(1.5)
-    reader.send_signal(signal.SIGINT)
-    out, err = reader.communicate(timeout=60)
+        [COMMAND, "solve", str(fifo)], stderr=subprocess.PIPE, stdout=subprocess.PIPE, text=True,
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
+    )  # fmt: skip
+    try:
+        time.sleep(1.5)
+        reader.send_signal(signal.SIGINT)
+        out, err = reader.communicate(timeout=60)
+    finally:
+        reader.kill()
+        reader.communicate()
     assert (reader.returncode, out) == (130, "")
     assert err == "relorbit: stopped; nothing was left half written\n"
 
