@@ -13,8 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from scipy.stats import beta as beta_distribution
-from scipy.stats import chi2 as chi2_distribution
+from scipy.special import betaincc, chdtri
 
 from relorbit.derive.wobble import (
     Scatter,
@@ -266,10 +265,10 @@ def _false_alarm(
     probability.
     """
     share = min(gain / reference, 1.0)
-    single = float(beta_distribution.sf(share, 2.0, 0.5 * (dof - 4)))
+    single = float(betaincc(2.0, 0.5 * (dof - 4), share))
     if single <= 0.0:
         return 0.0
-    u = float(chi2_distribution.isf(single, 4))
+    u = float(chdtri(4, single))
     crossings = _rate(s, frequency) * (0.5 * u) ** 1.5 * np.exp(-0.5 * u)
     return float(-np.expm1(-(single + crossings))) if single < 1.0 else 1.0
 

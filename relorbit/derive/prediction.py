@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
-from scipy.stats import chi2 as chi2_distribution
+from scipy.special import chdtrc
 
 from relorbit.orbit.elements import Elements, complex_position, polar
 from relorbit.orbit.kepler import FloatArray
@@ -175,4 +175,4 @@ def _chi2(gap: FloatArray, covariance: FloatArray) -> tuple[float, int, float]:
     scale = 1.0 / np.sqrt(np.diag(covariance))
     scaled = scale * gap
     value = float(scaled @ np.linalg.solve(covariance * np.outer(scale, scale), scaled))
-    return value, gap.size, float(chi2_distribution.sf(value, gap.size))
+    return value, gap.size, float(chdtrc(gap.size, max(value, 0.0)))

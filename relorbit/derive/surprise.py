@@ -12,7 +12,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
-from scipy.stats import chi2 as chi2_distribution
+from scipy.special import chdtrc
 
 from relorbit.measures.table import Measures
 from relorbit.orbit.elements import Elements
@@ -54,7 +54,7 @@ class RefitTest:
         self.before, self.new, self.report = before, new, report
         self.old = _with_weights(before, old)
         # a reduced chi2 a little above 1 is chance, and would make every test too lenient
-        chance = float(chi2_distribution.sf(before.chi2, before.dof)) if before.dof > 0 else 1.0
+        chance = float(chdtrc(before.dof, before.chi2)) if before.dof > 0 else 1.0
         self.scale = before.error_scale**2 if chance < TOO_SMALL else 1.0
         o = observe(self.old)
         t0 = o.mean_epoch
@@ -71,7 +71,7 @@ class RefitTest:
         new = self.new.select(np.asarray(rows, dtype=int))
         values = int(new.has_theta.sum() + new.has_rho.sum())
         rise = min(self._rise(new, [self.before.elements]), self._search(new)[0])
-        return rise, values, float(chi2_distribution.sf(rise, values))
+        return rise, values, float(chdtrc(values, rise))
 
     def profile(self, row: int) -> tuple[float, float]:
         """How far off theta and rho of a new measure are, each by itself, in sigma; NaN missing.

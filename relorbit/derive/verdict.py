@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
-from scipy.stats import chi2 as chi2_distribution
+from scipy.special import chdtrc
 
 from relorbit.derive.new_measures import NewMeasures
 from relorbit.derive.prediction import Deviations, deviations
@@ -144,7 +144,7 @@ class Trial:
         )
         chi2, values = self._of_the_new()
         rise = max(after - before + chi2, 0.0)
-        return values > 0 and bool(chi2_distribution.sf(rise, values) >= SURPRISING)
+        return values > 0 and bool(chdtrc(values, rise) >= SURPRISING)
 
     def _of_the_new(self) -> tuple[float, int]:
         """chi2 of the new measures about the refitted orbit, and how many values they have."""
@@ -168,7 +168,7 @@ class Trial:
     def _refit_holds(self) -> bool:
         """True where the refitted orbit passes through the new measures within their errors."""
         chi2, values = self._of_the_new()
-        return values > 0 and bool(chi2_distribution.sf(chi2, values) >= SURPRISING)
+        return values > 0 and bool(chdtrc(values, chi2) >= SURPRISING)
 
     def _correction(self) -> str:
         text = "the orbit needs correction: the new measures disagree with it"

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from scipy.optimize import brentq
-from scipy.stats import chi2 as chi2_distribution
+from scipy.special import chdtrc
 
 from relorbit.orbit.elements import Elements
 from relorbit.orbit.kepler import TWO_PI, FloatArray
@@ -144,7 +144,7 @@ def drift(
     slope = inverse @ part / size[-2:]
     sigma = np.sqrt(spread * np.diag(inverse @ inverse.T)) / size[-2:]
     found = np.stack([slope, sigma], axis=1).ravel() * 1000.0
-    return (*(float(x) for x in found), float(chi2_distribution.sf(part @ part / spread, 2)))
+    return (*(float(x) for x in found), float(chdtrc(2, part @ part / spread)))
 
 
 def minimum_mass(axis_au: float, period: float, host: float) -> float:

@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import norm
+from scipy.special import ndtri
 
 from relorbit.errors import InputError
 from relorbit.measures.table import Measures
@@ -224,7 +224,7 @@ def _promising(
 def _as_given(noise: Noise) -> bool:
     """True where the errors given were about right and no value is off beyond chance."""
     known = noise.weight[np.isfinite(noise.weight)]
-    farthest = float(norm.isf(0.5 * BEYOND_CHANCE / known.size))
+    farthest = -float(ndtri(0.5 * BEYOND_CHANCE / known.size))
     lightest = student().weight(np.array(farthest)) / student().full_weight
     return bool(np.abs(noise.log_factor).max() < MUCH and known.min() >= lightest)
 
