@@ -42,21 +42,21 @@ def test_faster_than_vectorised_emcee_by_far():
 
 
 def test_calibrated_on_pairs_from_the_prior():
-    found = calibration.run(60, seed=5, size=300)
+    found = calibration.run(36, seed=5, size=300)
     fixed, cut = found.fixed, found.cut
     for slot in range(len(calibration.QUANTITIES)):
         assert calibration.p_of_uniform(fixed[:, slot], bins=6) > 0.001
-    # 480 ranks of 60 pairs: four standard deviations, were they independent by twos
-    assert calibration.coverage(cut.ravel(), 0.68) == pytest.approx(0.68, abs=0.12)
-    assert calibration.coverage(cut.ravel(), 0.95) == pytest.approx(0.95, abs=0.06)
+    # 288 ranks of 36 pairs: four standard deviations, were they independent by twos
+    assert calibration.coverage(cut.ravel(), 0.68) == pytest.approx(0.68, abs=0.155)
+    assert calibration.coverage(cut.ravel(), 0.95) == pytest.approx(0.95, abs=0.073)
 
 
 def test_mass_without_bias_from_half_an_orbit():
-    values, lost = lucy_mass.row(0.5, 0.05, "flat-constants", 20)
+    values, lost = lucy_mass.row(0.5, 0.05, "flat-constants", 12)
     assert lost == 0
     error = values[:, 0].std(ddof=1) / np.sqrt(len(values))
     assert values[:, 0].mean() == pytest.approx(1.0, abs=4.0 * error)
-    assert error < 0.1
+    assert error < 0.13
 
 
 def test_mean_of_the_mass_agrees_with_a_plain_sum():
@@ -71,11 +71,11 @@ def test_mean_of_the_mass_agrees_with_a_plain_sum():
 def test_kinds_are_told_apart():
     rng = np.random.default_rng(3)
     prior, speeds = kind_odds.PRIOR, kind_odds.SPEEDS
-    for number in range(8):
+    for number in range(5):
         pair, _ = kind_odds.drawn(rng, binary=False)
         assert kind(pair, number, prior, speed_range=speeds).odds_orbit < 100.0
     curved = 0
-    while curved < 8:
+    while curved < 5:
         pair, fall = kind_odds.drawn(rng, binary=True)
         if fall > kind_odds.CURVED:
             curved += 1

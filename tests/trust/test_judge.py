@@ -264,11 +264,11 @@ def test_values_missing_or_bad(recorded):
 
 
 def test_predicted_errors_ten_years_ahead():
-    """The bar of the benchmark judge_errors, on sixty histories with well known periods."""
+    """The bar of the benchmark judge_errors, on forty histories with well known periods."""
     pulls, seed = [], 0
-    while len(pulls) < 120:
+    while len(pulls) < 80:
         seed += 1
         one = judge_trial(seed, "as-given")
         if one is not None and one[3] < WELL_KNOWN:
             pulls += one[:2]
-    assert np.mean(np.square(pulls)) == pytest.approx(1.0, abs=4.0 * np.sqrt(2.0 / 120))
+    assert np.mean(np.square(pulls)) == pytest.approx(1.0, abs=4.0 * np.sqrt(2.0 / 80))
