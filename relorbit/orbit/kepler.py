@@ -59,9 +59,11 @@ def eccentric_anomaly(mean_anomaly: ArrayLike, e: ArrayLike) -> FloatArray:
     mean, ecc = np.asarray(mean_anomaly, dtype=np.float64), np.asarray(e, dtype=np.float64)
     if ecc.ndim == 0 and mean.ndim > 0 and 0 < mean.size <= BLOCK:
         return _at_one_e(mean, ecc.item())
-    mean, ecc = np.broadcast_arrays(mean, ecc)
-    shape = mean.shape
-    mean, ecc = mean.reshape(-1), ecc.reshape(-1)
+    shape = np.broadcast_shapes(mean.shape, ecc.shape)
+    mean, ecc = (
+        (part if part.shape == shape else np.broadcast_to(part, shape)).reshape(-1)
+        for part in (mean, ecc)
+    )
     if not (ecc.size == 0 or (ecc.min() >= 0.0 and ecc.max() < 1.0)):
         raise ValueError(E_RANGE)
     size = min(BLOCK, mean.size)
@@ -87,7 +89,7 @@ def _at_one_e(mean: FloatArray, e: float) -> FloatArray:
         raise ValueError(E_RANGE)
     m = np.abs(mean)
     largest = m.max()
-    if not np.isfinite(largest):
+    if not largest < np.inf:
         raise ValueError(M_FINITE)
     reduced = mean
     if largest > np.pi:

@@ -13,6 +13,7 @@ equinoctial pair (Broucke & Cefola 1972, Celestial Mechanics 5, 303, from memory
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -127,7 +128,8 @@ def jacobian_and_place(
 
 def _functions(log_P: ArrayLike, k: ArrayLike, h: ArrayLike, time: FloatArray) -> FloatArray:
     """The eight functions of time, shape (..., 8, n)."""
-    longitude = (TWO_PI * np.exp(-log_P)) * time
+    exp = math.exp if isinstance(log_P, float) else np.exp
+    longitude = (TWO_PI * exp(-log_P)) * time
     F = eccentric_longitude(longitude, k, h)
     out = np.empty((*longitude.shape[:-1], 8, longitude.shape[-1]))
     out[..., ONE, :] = 1.0
@@ -187,9 +189,13 @@ def _unit_orbit(g):
 
 def eccentric_longitude(longitude: FloatArray, k: ArrayLike, h: ArrayLike) -> FloatArray:
     """F = E + varpi (radians) from the mean longitude; k and h are broadcast against it."""
-    varpi, e = np.arctan2(h, k), np.hypot(k, h)
-    # a single e is solved for faster than an array of one
-    F = eccentric_anomaly(longitude - varpi, e.item() if e.size == 1 else e)
+    if isinstance(k, float):
+        varpi, e = math.atan2(h, k), math.hypot(k, h)
+    else:
+        varpi, e = np.arctan2(h, k), np.hypot(k, h)
+        # a single e is solved for faster than an array of one
+        e = e.item() if e.size == 1 else e
+    F = eccentric_anomaly(longitude - varpi, e)
     F += varpi
     return F
 

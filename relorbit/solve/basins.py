@@ -25,7 +25,7 @@ from relorbit.solve.refine import (
 from relorbit.solve.search import ECCENTRICITIES, period_grid, search
 
 STARTS = 32  # minima of the map that are followed down
-FIRST_STEPS, LATER_STEPS, LAST_STEPS = 6, 25, 100
+FIRST_STEPS, LATER_STEPS, SETTLING_STEPS, LAST_STEPS = 6, 8, 25, 100
 ALWAYS_FOLLOWED = 6, 4  # best orbits that go on whatever their chi2, at first and at last
 HOPELESS = 30.0  # times the best chi2: such orbits are followed no further
 FOLLOWED_MEASURES = 400  # the starts are followed on this many measures at the most
@@ -84,6 +84,8 @@ def settle(
 ) -> Refined:
     """Distinct minima of the problem, best first, from near starts u, shape (c, 7)."""
     rough = refine(problem, u, held, LATER_STEPS, 1e-2, on_step=on_step)
+    keep = _near_the_best(_distinct(rough.u, rough.chi2), rough.chi2)
+    rough = refine(problem, rough.u[keep], held, SETTLING_STEPS, 1e-2, on_step=on_step)
     keep = _near_the_best(_distinct(rough.u, rough.chi2), rough.chi2)
     fine = refine(problem, rough.u[keep], held, LAST_STEPS, 1e-9, on_step=on_step)
     keep = _near_the_best(_distinct(fine.u, fine.chi2), fine.chi2)

@@ -166,25 +166,27 @@ def refine(
         # false also where a step is not finite
         inside = (np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E) & (expected < np.inf)
         inside &= np.abs(step[:, 0]) < LARGEST_STEP
-        if not inside.all():
+        # counting is the quickest question to a small array
+        if np.count_nonzero(inside) < inside.size:
             trial = np.where(inside[:, None], trial, u)
         trial = held.put_back(trial, t0)
         ends = (expected < tolerance) & (damping < 1.0)
-        if ends.any():
+        if count := np.count_nonzero(ends):
             # chi2 is as good as quadratic here: the last step needs no look at where it leads
             end_u[which[ends]] = trial[ends]
             end_chi2[which[ends]] = (chi2 - np.where(inside, expected, 0.0))[ends]
+            if count == ends.size:
+                which, u, chi2 = which[:0], u[:0], chi2[:0]
+                break
             parts = which, u, chi2, normal, right, damping, trial, inside
             which, u, chi2, normal, right, damping, trial, inside = _only(~ends, parts)
-            if not which.size:
-                break
         tried = _normal_equations(problem, trial)
         if iteration > SLOW and basis is None:
             # a bent valley: the constants, which are nearly linear, follow at once
             trial[:, 3:] += solve_scaled(tried[1][:, 3:, 3:], tried[2][:, 3:])
             tried = _normal_equations(problem, trial)
         better = inside & (tried[0] < chi2)
-        if better.all():
+        if np.count_nonzero(better) == better.size:
             u, (chi2, normal, right) = trial, tried
             damping *= LESS_DAMPING
             continue
@@ -227,17 +229,18 @@ def _damped_step(
         normal, right = across @ normal @ basis, (across @ right[..., None])[..., 0]
     else:
         normal, right = normal[:, columns, columns], right[:, columns]
-    diagonal = np.diagonal(normal, axis1=1, axis2=2)
-    scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
+    size = normal.shape[-1]
+    scale = 1.0 / np.sqrt(np.maximum(np.diagonal(normal, axis1=1, axis2=2), 1e-300))
     scaled = normal * (scale[:, :, None] * scale[:, None, :])
-    slots = np.arange(scaled.shape[-1])
-    scaled[:, slots, slots] = 1.0 + 1e-13 + damping[:, None]
+    scaled.reshape(len(scaled), -1)[:, :: size + 1] = 1.0 + 1e-13 + damping[:, None]
     right = scale * right
     inner = np.linalg.solve(scaled, right[..., None])[..., 0]
     expected = (inner * (right + damping[:, None] * inner)).sum(axis=1)
     step = scale * inner
     if basis is not None:
         return (basis @ step[..., None])[..., 0], expected
+    if size == SIZE:
+        return step, expected
     full = np.zeros((step.shape[0], SIZE))
     full[:, columns] = step
     return full, expected

@@ -137,9 +137,11 @@ def search(
             # with a few measures all may fall on one phase: that T then gains nothing
             with np.errstate(over="ignore", invalid="ignore"):
                 every = _gain(spectra[..., : kernels.shape[-1]], kernels)
-            np.nan_to_num(every, copy=False, nan=0.0, posinf=0.0, neginf=0.0)
+                sound = np.isfinite(every.sum())
+            if not sound:
+                np.nan_to_num(every, copy=False, nan=0.0, posinf=0.0, neginf=0.0)
             best = np.argmax(every, axis=-1)
-            gain[rows, column] = np.take_along_axis(every, best[:, None], axis=-1)[:, 0]
+            gain[rows, column] = every[np.arange(best.size), best]
             phase[rows, column] = best / every.shape[-1]
     T = reference + phase * periods[:, None]
     chi2 = data.constant - weight_unit * size_unit**2 * gain
