@@ -160,16 +160,8 @@ def refine(
         iteration += 1
         if on_step is not None:
             on_step()
-        basis = held.directions(u, t0)
-        step, expected = _damped_step(normal, right, damping, basis, columns)
-        trial = u + step
-        # false also where a step is not finite
-        inside = (np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E) & (expected < np.inf)
-        inside &= np.abs(step[:, 0]) < LARGEST_STEP
+        trial, inside, expected = _tried(u, normal, right, damping, held, t0, columns)
         # counting is the quickest question to a small array
-        if np.count_nonzero(inside) < inside.size:
-            trial = np.where(inside[:, None], trial, u)
-        trial = held.put_back(trial, t0)
         ends = (expected < tolerance) & (damping < 1.0)
         if count := np.count_nonzero(ends):
             # chi2 is as good as quadratic here: the last step needs no look at where it leads
@@ -181,7 +173,7 @@ def refine(
             parts = which, u, chi2, normal, right, damping, trial, inside
             which, u, chi2, normal, right, damping, trial, inside = _only(~ends, parts)
         tried = _normal_equations(problem, trial)
-        if iteration > SLOW and basis is None:
+        if iteration > SLOW and not held.values:
             # a bent valley: the constants, which are nearly linear, follow at once
             trial[:, 3:] += solve_scaled(tried[1][:, 3:, 3:], tried[2][:, 3:])
             tried = _normal_equations(problem, trial)
@@ -204,6 +196,28 @@ def refine(
 
 def _only(rows: NDArray[np.bool_], parts: tuple[NDArray, ...]) -> tuple[NDArray, ...]:
     return tuple(part[rows] for part in parts)
+
+
+def _tried(
+    u: FloatArray,
+    normal: FloatArray,
+    right: FloatArray,
+    damping: FloatArray,
+    held: Holding,
+    t0: float,
+    columns: slice,
+) -> tuple[FloatArray, NDArray[np.bool_], FloatArray]:
+    """The next orbits, shape (c, 7), which of them are within bounds (the others stay where they
+    are), and the fall of chi2 that is expected."""
+    basis = held.directions(u, t0)
+    step, expected = _damped_step(normal, right, damping, basis, columns)
+    trial = u + step
+    # false also where a step is not finite
+    inside = (np.hypot(trial[:, 1], trial[:, 2]) < HIGHEST_E) & (expected < np.inf)
+    inside &= np.abs(step[:, 0]) < LARGEST_STEP
+    if np.count_nonzero(inside) < inside.size:
+        trial = np.where(inside[:, None], trial, u)
+    return held.put_back(trial, t0), inside, expected
 
 
 def _normal_equations(problem: Problem, u: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
