@@ -311,8 +311,10 @@ class _Fit:
         change = np.zeros(self.cells)
         for _ in range(4):
             z2 = (z * np.exp(-change[self.cell])) ** 2
-            square = z2 * self.t.weight(np.sqrt(z2))
-            value = self._sum(freedom * (square - 1.0))
+            size = np.sqrt(z2)
+            square = z2 * self.t.weight(size)
+            # a slip has no say: else a group of slips alone would have no error at all
+            value = self._sum(freedom * (square - self.t.sound(size)))
             slope = self._sum(freedom * 2.0 * square * self.t.core / (self.t.core + z2))
             self._follow_the_technique(log_factor + change, slope)
             pull = 1.0 / self.spread[self.parent] ** 2

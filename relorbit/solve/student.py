@@ -49,7 +49,7 @@ class Student:
 
     def weight(self, z: FloatArray) -> FloatArray:
         """What a value counts for, from its residual in sigma; z^2 weight(z) averages to 1."""
-        return (self.freedom + 1.0) / (self.core + z * z) * self._sound(z)
+        return (self.freedom + 1.0) / (self.core + z * z) * self.sound(z)
 
     @property
     def _level(self) -> float:
@@ -58,7 +58,7 @@ class Student:
         peak = gamma(half) / gamma(0.5 * self.freedom) / sqrt(pi * self.core)
         return SLIPS / (1.0 - SLIPS) / STRETCH / peak
 
-    def _sound(self, z: FloatArray) -> FloatArray:
+    def sound(self, z: FloatArray) -> FloatArray:
         """Probability that a value is no slip."""
         tail = (1.0 + z * z / self.core) ** (-0.5 * (self.freedom + 1.0))
         return tail / (tail + self._level)

@@ -213,3 +213,20 @@ def test_a_slip_of_thirty_sigma_moves_the_orbit_no_more_than_leaving_it_out(seed
     with_slip, left_out, as_given, _ = slip_trial(seed)
     assert with_slip < max(1.5 * left_out, 0.25)
     assert as_given > 2.0 * with_slip
+
+
+def test_a_group_of_slips_alone_leans_on_its_technique():
+    """Two precise measures of another star count for nothing, and keep an error of their own."""
+    pair = made([(40, 0.01)])
+    m = pair.measures
+    other = Pair.from_arrays(
+        [2004.0, 2009.0], [(m.theta[-1] + 50.0) % 360.0] * 2, [3.0, 3.0], [0.002] * 2,
+        [0.00005] * 2, technique="space", observer="Catalogue",
+    )  # fmt: skip
+    both = pair.with_measures(m.append(other.measures))
+    alone, found = (solve(one, errors="from-residuals") for one in (pair, both))
+    (group,) = (one for one in found.noise if one.name.startswith("space"))
+    for factor in (group.across_factor, group.along_factor):
+        assert 0.1 < factor < 1e6
+    assert group.down_weighted == (40, 41)
+    assert np.nanmax(np.abs(gaps(found.elements, alone.elements) / sigmas(alone))) < 0.5
